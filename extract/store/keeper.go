@@ -57,8 +57,8 @@ func (k *Keeper) Load(key string) ([]byte, bool) {
 }
 
 // Save keeps data under key, in place of what was there, and is done when they
-// outlast a power failure. An error is *FileSystem; then the earlier data are
-// still there.
+// outlast a power failure. An error is *FileSystem; what Load then gives is the
+// earlier data, or the new where only the last sync failed.
 func (k *Keeper) Save(key string, data []byte) error {
 	if err := k.save(key, data); err != nil {
 		return &FileSystem{Doing: "save a checkpoint in", Path: k.dir, Err: err}
