@@ -10,9 +10,11 @@ import (
 	"strings"
 	"syscall"
 	"testing"
+
+	"nullmark/extract/result"
 )
 
-// faulty is a disk whose operation number failAt (counted from 1) fails, and
+// faulty is a disk (one that syncs nothing, for speed) whose operation number failAt (counted from 1) fails, and
 // with dead every later one: the process is gone, nothing is cleaned up.
 type faulty struct {
 	system
@@ -23,10 +25,12 @@ type faulty struct {
 	count      int
 	renames    int
 	failed     string // the operation that failed
+	log        []string
 }
 
 func (d *faulty) step(format string, args ...any) error {
 	d.count++
+	d.log = append(d.log, fmt.Sprintf(format, args...))
 	if d.count == d.failAt || d.dead && d.failAt > 0 && d.count > d.failAt {
 		if d.failed == "" {
 			d.failed = fmt.Sprintf(format, args...)
@@ -101,10 +105,11 @@ func (d *faulty) RemoveAll(path string) error {
 }
 
 func (d *faulty) SyncDir(path string) error {
-	if err := d.step("SyncDir"); err != nil {
+	if err := d.step("SyncDir %s", filepath.Base(path)); err != nil {
 		return err
 	}
-	return d.system.SyncDir(path)
+	_, err := os.Stat(path)
+	return err
 }
 
 type faultyFile struct {
@@ -122,16 +127,23 @@ func (f *faultyFile) Write(p []byte) (int, error) {
 	return f.file.Write(p)
 }
 
-func (f *faultyFile) Sync() error {
-	if err := f.d.step("Sync %s", f.name); err != nil {
-		return err
-	}
-	return f.file.Sync()
-}
+func (f *faultyFile) Sync() error { return f.d.step("Sync %s", f.name) }
 
 func (f *faultyFile) Close() error {
 	err := f.d.step("Close %s", f.name)
 	return errors.Join(err, f.file.Close())
+}
+
+// short is sample with a few samples only.
+func short(seed float64) *result.Bundle {
+	b := sample(seed)
+	s := b.Series
+	s.U, s.T, s.R, s.Phi = s.U[:50], s.T[:40], s.R[:40], s.Phi[:40]
+	for i := range s.Modes {
+		m := &s.Modes[i]
+		m.Wave, m.WaveErr, m.Evidence = m.Wave[:50], m.WaveErr[:50], nil
+	}
+	return b
 }
 
 // replacement gives the trees of an earlier result and of the one that replaces
@@ -140,8 +152,8 @@ func replacement(t *testing.T, earlier bool) (old, new map[string]string, lay fu
 	t.Helper()
 	root := t.TempDir()
 	a, b := filepath.Join(root, "a"), filepath.Join(root, "b")
-	mustWrite(t, a, sample(1), caseA)
-	mustWrite(t, b, sample(2), caseA)
+	mustWrite(t, a, short(1), caseA)
+	mustWrite(t, b, short(2), caseA)
 	old, new = tree(t, a), tree(t, b)
 	lay = func(dir string) {
 		if err := os.MkdirAll(filepath.Dir(dir), 0o777); err != nil {
@@ -185,7 +197,7 @@ func TestEveryFault(t *testing.T) {
 					dir := filepath.Join(root, "results", "r")
 					lay(dir)
 					d := &faulty{failAt: k, dead: dead, noExchange: noExchange}
-					err := write(d, dir, sample(2), []byte(caseA), all(), false)
+					err := write(d, dir, short(2), []byte(caseA), all(), false)
 					if d.failed == "" {
 						if err != nil {
 							t.Errorf("%s: no fault, yet %v", label, err)
@@ -229,7 +241,7 @@ func TestEveryFault(t *testing.T) {
 						t.Errorf("%s: left behind %v", at, names(t, filepath.Dir(dir)))
 					}
 					// The next write succeeds and leaves nothing but its result.
-					if err := Write(dir, sample(2), []byte(caseA), all(), false); err != nil {
+					if err := write(&faulty{}, dir, short(2), []byte(caseA), all(), false); err != nil {
 						t.Errorf("%s: the next write: %v", at, err)
 					}
 					if !reflect.DeepEqual(state(t, dir), new) || len(names(t, filepath.Dir(dir))) != 1 {
@@ -244,6 +256,49 @@ func TestEveryFault(t *testing.T) {
 	}
 }
 
+// Every file and the new directory are durable before the directory takes its
+// place, and the place is durable before what it replaced is removed.
+func TestSyncOrder(t *testing.T) {
+	for _, noExchange := range []bool{false, true} {
+		_, _, lay := replacement(t, true)
+		dir := filepath.Join(t.TempDir(), "results", "r")
+		lay(dir)
+		d := &faulty{noExchange: noExchange}
+		if err := write(d, dir, short(2), []byte(caseA), all(), false); err != nil {
+			t.Fatal(err)
+		}
+		var order []string
+		for _, name := range []string{"case.yaml", "result.json", "waveform.npz", "horizon.npz", "flux.csv", "report.html", "SHA256SUMS"} {
+			order = append(order, "Create "+name, "Write "+name, "Sync "+name, "Close "+name)
+		}
+		order = append(order, "SyncDir new")
+		if noExchange {
+			order = append(order, "Rename", "Rename")
+		} else {
+			order = append(order, "Exchange")
+		}
+		order = append(order, "SyncDir results", "RemoveAll")
+		at := 0
+		for _, op := range order {
+			for at < len(d.log) && d.log[at] != op {
+				at++
+			}
+			if at == len(d.log) {
+				t.Fatalf("no %q in its place:\n%s", op, strings.Join(d.log, "\n"))
+			}
+			at++
+		}
+	}
+	d := &faulty{}
+	dir := t.TempDir()
+	if err := (&Keeper{disk: d, dir: dir}).save("a", []byte("data")); err != nil {
+		t.Fatal(err)
+	}
+	if got, want := strings.Join(d.log, ", "), "MkdirAll, SyncDir "+filepath.Base(dir)+", MkdirTemp, Create data, Write data, Write data, Sync data, Close data, Rename, SyncDir .partial, RemoveAll"; got != want {
+		t.Errorf("a checkpoint is saved by %s, want %s", got, want)
+	}
+}
+
 // When even putting the earlier result back fails, it is kept, the error says
 // where, and the next run restores it.
 func TestEarlierResultSurvivesBrokenRenames(t *testing.T) {
@@ -251,7 +306,7 @@ func TestEarlierResultSurvivesBrokenRenames(t *testing.T) {
 	dir := filepath.Join(t.TempDir(), "results", "r")
 	lay(dir)
 	d := &faulty{noExchange: true, onlyRename: 2}
-	err := write(d, dir, sample(2), []byte(caseA), all(), false)
+	err := write(d, dir, short(2), []byte(caseA), all(), false)
 	if !errors.Is(err, syscall.EIO) || present(dir) || !strings.Contains(err.Error(), "kept in") {
 		t.Fatalf("%v, present %v", err, present(dir))
 	}
