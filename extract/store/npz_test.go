@@ -260,18 +260,14 @@ func FuzzReadNPZ(f *testing.F) {
 		f.Add(spoiled.Bytes())
 	}
 	f.Fuzz(func(t *testing.T, data []byte) {
-		dir := t.TempDir()
-		if err := os.WriteFile(filepath.Join(dir, "x.npz"), data, 0o666); err != nil {
-			t.Fatal(err)
-		}
 		spoiled := !bytes.Equal(data, good.Bytes())
 		s := new(result.Series)
-		_, err := readNPZ(dir, "x.npz", func(a array) string { return takeWave(s, a) })
+		err := scanNPZ(bytes.NewReader(data), int64(len(data)), func(a array) string { return takeWave(s, a) })
 		if !spoiled && err != nil {
 			t.Errorf("a good file: %v", err)
 		}
 		for _, m := range s.Modes {
-			if len(m.Wave) > len(data) {
+			if len(m.Wave) > 1032*len(data)/16 {
 				t.Errorf("%d samples from %d bytes", len(m.Wave), len(data))
 			}
 		}

@@ -78,9 +78,6 @@ func readWhole(dir, name string) ([]byte, error) {
 // readNPZ hands every array of dir/name to take, which answers with what is
 // wrong with it or "". It reports whether the file is there.
 func readNPZ(dir, name string, take func(array) string) (bool, error) {
-	bad := func(reason string, err error) error {
-		return &NotResult{Dir: dir, Reason: name + " " + reason, Err: err}
-	}
 	f, err := os.Open(filepath.Join(dir, name))
 	if errors.Is(err, os.ErrNotExist) {
 		return false, nil
@@ -93,20 +90,32 @@ func readNPZ(dir, name string, take func(array) string) (bool, error) {
 	if err != nil {
 		return false, &FileSystem{Doing: "read " + name + " of", Path: dir, Err: err}
 	}
-	z, err := zip.NewReader(f, info.Size())
-	if err != nil {
-		return false, bad("is damaged: it is no zip archive", err)
-	}
-	for _, entry := range z.File {
-		a, err := readArray(entry)
-		if err != nil {
-			return false, bad(fmt.Sprintf("is damaged at %s: %v", entry.Name, err), err)
-		}
-		if fault := take(a); fault != "" {
-			return false, bad("is inconsistent: "+entry.Name+" "+fault, nil)
-		}
+	if err := scanNPZ(f, info.Size(), take); err != nil {
+		return false, &NotResult{Dir: dir, Reason: name + " " + err.Error(), Err: err}
 	}
 	return true, nil
+}
+
+// scanNPZ does the same with a file of the given size.
+func scanNPZ(r io.ReaderAt, size int64, take func(array) string) error {
+	z, err := zip.NewReader(r, size)
+	if err != nil {
+		return fmt.Errorf("is damaged: it is no zip archive (%w)", err)
+	}
+	for _, entry := range z.File {
+		// Deflate shrinks at most 1032 times; a larger claim is false.
+		if entry.UncompressedSize64/1032 > uint64(size) {
+			return fmt.Errorf("is damaged at %s: it cannot hold %d bytes", entry.Name, entry.UncompressedSize64)
+		}
+		a, err := readArray(entry)
+		if err != nil {
+			return fmt.Errorf("is damaged at %s: %w", entry.Name, err)
+		}
+		if fault := take(a); fault != "" {
+			return fmt.Errorf("is inconsistent: %s %s", entry.Name, fault)
+		}
+	}
+	return nil
 }
 
 // readArray decodes one entry and verifies its checksum.
