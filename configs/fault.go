@@ -43,9 +43,9 @@ func (f Fault) Error() string {
 	var place string
 	switch f.Origin {
 	case OriginEnvironment:
-		place = "environment " + variable(f.Key)
+		place = "environment " + show(variable(base(f.Key)))
 	case OriginSet:
-		place = "--set " + f.Key
+		place = "--set " + show(base(f.Key))
 	default:
 		place = f.File
 		if f.Line > 0 {
@@ -103,7 +103,11 @@ func number(x float64) string {
 	case math.IsInf(x, -1):
 		return "-.inf"
 	}
-	return strconv.FormatFloat(x, 'g', -1, 64)
+	if x == math.Trunc(x) && math.Abs(x) < 1e15 {
+		return strconv.FormatFloat(x, 'f', -1, 64)
+	}
+	s := strconv.FormatFloat(x, 'g', -1, 64)
+	return strings.Replace(s, "e-0", "e-", 1) // 1e-8, as people write it
 }
 
 // show makes a value fit to stand in a sentence: one line, not too long,

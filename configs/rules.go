@@ -178,7 +178,7 @@ func (r Reader) waves(s *sheet, set setting) {
 	if hasModes {
 		for i, lm := range modes.value.([][2]int) {
 			if lm[0] < least {
-				s.refuse(modes.layer, modes.lines[i], fmt.Sprintf("waves.modes[%d]", i), fmt.Sprintf("[%d, %d]", lm[0], lm[1]),
+				s.refuse(modes.layer, modes.items[i].line, modes.items[i].key, fmt.Sprintf("[%d, %d]", lm[0], lm[1]),
 					fmt.Sprintf("a pair [l, m] with l >= %d%s", least, reason))
 			}
 		}

@@ -39,22 +39,26 @@ func (b limits) hold(x float64) bool {
 
 // String says the limits in words that follow "a number".
 func (b limits) String() string {
-	var words []string
-	if !math.IsInf(b.low, -1) {
-		word := "from"
-		if b.lowOpen {
-			word = "above"
-		}
-		words = append(words, word+" "+number(b.low))
+	low, high := "from ", "below "
+	if b.lowOpen {
+		low = "above "
 	}
-	if !math.IsInf(b.high, 1) {
-		word := "up to"
-		if b.highOpen {
-			word = "below"
-		}
-		words = append(words, word+" "+number(b.high))
+	if !b.highOpen {
+		high = "up to "
 	}
-	return strings.Join(words, " and ")
+	low += number(b.low)
+	high += number(b.high)
+	switch {
+	case math.IsInf(b.low, -1) && math.IsInf(b.high, 1):
+		return ""
+	case math.IsInf(b.high, 1):
+		return low
+	case math.IsInf(b.low, -1):
+		return high
+	case !b.lowOpen && !b.highOpen:
+		return low + " to " + number(b.high)
+	}
+	return low + " and " + high
 }
 
 // key is one row of the schema.
@@ -94,7 +98,7 @@ var schema = []key{
 		doc: "`master`: Regge–Wheeler (odd) and Zerilli (even), spin 0 only, the default there; `teukolsky`: any spin, the default when the spin is not 0."},
 	{path: "waves.spin_weight", form: whole, bounds: between(-2, 2), even: true, preset: -2, equation: Teukolsky,
 		doc: "Spin weight of the field; 0 and 2 for pulses only."},
-	{path: "waves.l_max", form: whole, bounds: between(0, maxL), preset: 8,
+	{path: "waves.l_max", form: whole, bounds: between(0, maxL), preset: 8, hint: "at least 2 for gravitational waves",
 		doc: "All modes up to this l are evolved."},
 	{path: "waves.modes", form: pairs,
 		doc: "In place of `waves.l_max`: just these modes, as `[[l, m], …]`."},

@@ -32,9 +32,15 @@ func (l layer) origin() string {
 type entry struct {
 	value any // of the Go type that the Case holds
 	shown string
-	line  int   // 0 outside the file
-	lines []int // of the items of a list
+	line  int    // 0 outside the file
+	items []item // of a list of modes, in the order of value
 	layer layer
+}
+
+// item is where one item of a list was typed.
+type item struct {
+	key  string // such as waves.modes[1]
+	line int
 }
 
 // sheet collects what was typed, layer by layer, and every fault on the way.
@@ -149,6 +155,10 @@ func (s *sheet) unknown(l layer, line int, path, prefix, word, value string) {
 	sentence := show(path) + " is not a known key"
 	if find(path) != nil { // written flat
 		s.meant[path] = true
+	}
+	if len(s.faults) > mostShown { // nobody will read a guess
+		s.say(l, line, path, value, sentence)
+		return
 	}
 	if meant := guess(prefix, word); meant != "" {
 		sentence += "; did you mean " + meant + "?"
@@ -298,29 +308,26 @@ func (s *sheet) pairs(k *key, n *yaml.Node, l layer, e entry) {
 		return
 	}
 	var list [][2]int
-	good := true
-	for i, item := range n.Content {
+	seen := map[[2]int]bool{}
+	for i, node := range n.Content {
 		at := fmt.Sprintf("%s[%d]", k.path, i)
-		lm, ok := pair(item)
+		lm, ok := pair(node)
 		switch {
 		case !ok || lm[0] < 0 || lm[0] > maxL:
-			s.refuse(l, l.line(item), at, describe(item), fmt.Sprintf("a pair [l, m] of whole numbers with |m| <= l <= %d", maxL))
-			good = false
+			s.refuse(l, l.line(node), at, describe(node), fmt.Sprintf("a pair [l, m] of whole numbers with |m| <= l <= %d", maxL))
 		case max(lm[1], -lm[1]) > lm[0]:
-			s.refuse(l, l.line(item), at, describe(item), "a pair [l, m] with |m| <= l")
-			good = false
-		case slices.Contains(list, lm):
-			s.refuse(l, l.line(item), at, describe(item), "a mode that is not in the list already")
-			good = false
+			s.refuse(l, l.line(node), at, describe(node), "a pair [l, m] with |m| <= l")
+		case seen[lm]:
+			s.refuse(l, l.line(node), at, describe(node), "a mode that is not in the list already")
 		default:
+			seen[lm] = true
 			list = append(list, lm)
-			e.lines = append(e.lines, l.line(item))
+			e.items = append(e.items, item{at, l.line(node)})
 		}
 	}
-	if good {
-		e.value = list
-		s.values[l][k.path] = e
-	}
+	// Kept even when some items are faulty: the others have rules to meet, too.
+	e.value = list
+	s.values[l][k.path] = e
 }
 
 func pair(n *yaml.Node) (lm [2]int, ok bool) {
