@@ -155,7 +155,7 @@ func parse(data []byte) (root *yaml.Node, err error) {
 	decoder := yaml.NewDecoder(bytes.NewReader(data))
 	var document yaml.Node
 	if err := decoder.Decode(&document); err != nil && !errors.Is(err, io.EOF) {
-		return nil, syntax(err)
+		return nil, syntax(err, data)
 	}
 	if document.Kind == 0 || isNull(document.Content[0]) {
 		return nil, errors.New("the file is empty; a case needs at least an orbit or a pulse")
@@ -164,17 +164,24 @@ func parse(data []byte) (root *yaml.Node, err error) {
 	if err := decoder.Decode(&second); err == nil {
 		return nil, &syntaxError{line: second.Line, reason: "a case file holds one document, and here a second one begins"}
 	} else if !errors.Is(err, io.EOF) {
-		return nil, syntax(err)
+		return nil, syntax(err, data)
 	}
 	return document.Content[0], nil
 }
 
-func syntax(err error) error {
-	reason := strings.TrimPrefix(err.Error(), "yaml: ")
-	e := &syntaxError{reason: reason}
-	if at := yamlLine.FindStringSubmatch(reason); at != nil {
+// structural are the errors of the YAML library's parser; their lines count
+// from 0 (and 0 itself is left out), where those of its scanner count from 1.
+var structural = regexp.MustCompile(`^did not find expected (key|'-' indicator|',' or '[\]}]'|node content|<document start>)$`)
+
+func syntax(err error, data []byte) error {
+	e := &syntaxError{reason: strings.TrimPrefix(err.Error(), "yaml: ")}
+	if at := yamlLine.FindStringSubmatch(e.reason); at != nil {
 		e.line, _ = strconv.Atoi(at[1])
-		e.reason = strings.TrimPrefix(reason, at[0])
+		e.reason = strings.TrimPrefix(e.reason, at[0])
+	}
+	if structural.MatchString(e.reason) {
+		last := bytes.Count(bytes.TrimSuffix(data, []byte("\n")), []byte("\n")) + 1
+		e.line = min(e.line+1, last)
 	}
 	return e
 }

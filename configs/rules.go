@@ -172,7 +172,7 @@ func (r Reader) waves(s *sheet, set setting) {
 	reason := " (gravitational waves begin at l = 2)"
 	if hasTop {
 		if top.value.(int) < least {
-			s.refuse(top.layer, top.line, "waves.l_max", top.shown, fmt.Sprintf("a whole number from %d up to %d%s", least, maxL, reason))
+			s.refuse(top.layer, top.line, "waves.l_max", top.shown, fmt.Sprintf("a whole number from %d to %d%s", least, maxL, reason))
 		}
 	}
 	if hasModes {
