@@ -160,10 +160,15 @@ environment NULLMARK_ORBIT_RADUIS: NULLMARK_ORBIT_RADUIS does not stand for a ke
 environment NULLMARK_WAVES_MODES: waves.modes[1] is [1, 0], but must be a pair [l, m] with l >= 2 (gravitational waves begin at l = 2)
 --set orbit.radius: orbit.radius is ten, but must be a number above 0
 --set orbit.raduis: orbit.raduis is not a known key; did you mean orbit.radius?
---set hole.spin: hole.spin has no value; write key.path=value, such as orbit.radius=6
+--set hole.spin: "hole.spin" is not a setting; write key.path=value, such as orbit.radius=6
 --set output.every: output.every has no value; it must be a number from 0.001 to 10000
 --set span.until: span.until is "[", but must be a number above 0
 --set numerics.order: numerics.order is a mapping, but must be an even number from 2 to 12`},
+	{"settings of nothing", Reader{Sets: []string{"foo.bar=1", "=5", "Orbit.Radius=6"}}, good + "hole: {\"\": 1}",
+		`c.yaml:2: hole."" is not a known key; hole has spin
+--set foo.bar: foo.bar is not a known key; the case has title, hole, waves, orbit, pulse, accuracy, numerics, span, model, align, output
+--set : "=5" is not a setting; write key.path=value, such as orbit.radius=6
+--set Orbit.Radius: Orbit.Radius is not a known key; did you mean orbit.radius?`},
 	{"empty file", Reader{}, "", "c.yaml: the file is empty; a case needs at least an orbit or a pulse"},
 	{"comments alone", Reader{}, "# nothing\n", "c.yaml: the file is empty; a case needs at least an orbit or a pulse"},
 	{"binary file", Reader{}, "\x7fELF\x00\x01", "c.yaml: this is not a text file in UTF-8; a case file is YAML"},
@@ -261,9 +266,19 @@ c.yaml:5: orbit.radius is 2.5, but must be a radius above 3 (no timelike circula
 	if err == nil || !sameLines(err.Error(), want) {
 		t.Errorf("got\n%v\nwant\n%s", err, want)
 	}
-	if r.Sets = []string{"orbit.radius=6"}; called != 1 {
+	if called != 1 {
 		t.Errorf("checks ran %d times", called)
 	}
+	r.Sets = []string{"orbit.radius=6"} // beats the file, which then is no longer at fault
+	if _, err := r.Parse("c.yaml", []byte(typed)); called != 2 || len(err.(Faults)) != 1 {
+		t.Errorf("%v after %d calls", err, called)
+	}
+	r.Sets = []string{"orbit.radius=3"}
+	if _, err := r.Parse("c.yaml", []byte(good)); err == nil || !strings.HasSuffix(err.Error(),
+		"--set orbit.radius: orbit.radius is 3, but must be a radius above 3 (no timelike circular orbit at or inside the light ring)") {
+		t.Errorf("got %v", err)
+	}
+	r.Sets, called = nil, 1
 	if _, err := r.Parse("c.yaml", []byte(good)); err != nil || called != 2 {
 		t.Errorf("%v after %d calls", err, called)
 	}

@@ -222,8 +222,8 @@ func (s *sheet) variable(pair string) {
 func (s *sheet) assignment(pair string) {
 	path, value, ok := strings.Cut(pair, "=")
 	path = strings.TrimSpace(path)
-	if !ok {
-		s.say(setLayer, 0, path, "", show(pair)+" has no value; write key.path=value, such as orbit.radius=6")
+	if !ok || path == "" {
+		s.say(setLayer, 0, path, "", "\""+show(pair)+"\" is not a setting; write key.path=value, such as orbit.radius=6")
 		return
 	}
 	s.assign(path, value, setLayer)
@@ -259,11 +259,6 @@ func physical(path string) bool {
 // sound reports whether the keys that the physics needs are there and free of
 // faults, under their own names or under misspelt ones.
 func (s *sheet) sound() bool {
-	_, orbit := s.present["orbit"]
-	_, pulse := s.present["pulse"]
-	if orbit == pulse {
-		return false
-	}
 	for _, f := range s.faults {
 		if physical(f.Key) {
 			return false

@@ -54,6 +54,12 @@ func TestPrecedence(t *testing.T) {
 		*c.Span.Until != 5 || c.Waves.LMax != 8 || c.Output.Every != 2 || len(c.Output.Keep) != 0 {
 		t.Errorf("got %+v, orbit %+v", c, c.Orbit)
 	}
+	// The rules between keys hold for the values that count.
+	r = everything()
+	r.Sets = []string{"hole.spin=0", "orbit.kind=circular", "orbit.radius=7"}
+	if c := mustParse(t, r, "orbit: {kind: eccentric}\nhole: {spin: 0.5}"); c.Waves.Equation != Master || c.Orbit.Kind != Circular {
+		t.Errorf("got %+v, orbit %+v", c.Waves, c.Orbit)
+	}
 	// Every key can be reached through the environment, by one name only.
 	seen := map[string]string{}
 	for _, p := range everyPath() {

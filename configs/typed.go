@@ -152,6 +152,9 @@ func (s *sheet) node(v, k *yaml.Node, prefix, word string, l layer) {
 
 // unknown reports a key that does not exist, with the one that was meant.
 func (s *sheet) unknown(l layer, line int, path, prefix, word, value string) {
+	if word == "" {
+		path += `""`
+	}
 	sentence := show(path) + " is not a known key"
 	if find(path) != nil { // written flat
 		s.meant[path] = true
@@ -163,10 +166,10 @@ func (s *sheet) unknown(l layer, line int, path, prefix, word, value string) {
 	if meant := guess(prefix, word); meant != "" {
 		sentence += "; did you mean " + meant + "?"
 		s.meant[meant] = true
-	} else if known := children(prefix); prefix != "" {
+	} else if known := children(prefix); prefix != "" && len(known) > 0 {
 		sentence += "; " + prefix + " has " + strings.Join(known, ", ")
 	} else {
-		sentence += "; the case has " + strings.Join(known, ", ")
+		sentence += "; the case has " + strings.Join(children(""), ", ")
 	}
 	s.say(l, line, path, value, sentence)
 }
