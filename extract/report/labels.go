@@ -7,6 +7,11 @@ import (
 
 // label turns a stored key into words: omega_phi → "ω φ".
 func label(key string) string {
+	for _, p := range [][2]string{{"omega_", "frequency Ω_"}, {"period_", "period of "}} {
+		if rest, found := strings.CutPrefix(key, p[0]); found {
+			return p[1] + label(rest)
+		}
+	}
 	words := strings.Split(clean(key), "_")
 	for i, w := range words {
 		switch w {

@@ -57,9 +57,13 @@ func orbitPicture(r *result.Result, s *result.Series) (p picture, ok bool) {
 	scale := side / (2 * half)
 
 	keyY := top + 22.0
-	key := func(draw func(x, y float64), text string) {
+	key := func(draw func(x, y float64), text, more string) {
 		draw(left+side+46, keyY-4)
-		c.text(left+side+70, keyY, "label", "start", text)
+		c.text(left+side+74, keyY, "label", "start", text)
+		if more != "" {
+			keyY += 16
+			c.text(left+side+74, keyY, "tick", "start", more)
+		}
 		keyY += 24
 	}
 	circle := func(name, class, text string) {
@@ -76,15 +80,15 @@ func orbitPicture(r *result.Result, s *result.Series) (p picture, ok bool) {
 				return
 			}
 			c.line(x-8, y, x+18, y, class)
-		}, text+", r = "+settingNumber(radius)+" M")
+		}, text, "r = "+settingNumber(radius)+" M")
 	}
-	circle(KeyISCO, "isco", "innermost stable circular orbit")
+	circle(KeyISCO, "isco", "innermost stable orbit")
 	circle(KeyLightRing, "ring", "light ring")
 	circle(KeyHorizon, "hole", "the hole's horizon")
 
 	d, cut, first, last := track(x, y, s.R[:n], s.Phi[:n])
 	c.path(d, "track", pan.clip)
-	key(func(x, y float64) { c.line(x-8, y, x+18, y, "track") }, "path of the particle")
+	key(func(x, y float64) { c.line(x-8, y, x+18, y, "track") }, "path of the particle", "")
 	ends := []struct {
 		i     int
 		shape int
@@ -95,7 +99,7 @@ func orbitPicture(r *result.Result, s *result.Series) (p picture, ok bool) {
 		if math.Abs(ex) <= half && math.Abs(ey) <= half {
 			c.marker(e.shape, x.at(ex), y.at(ey), 5, "open ink")
 		}
-		key(func(x, y float64) { c.marker(e.shape, x+5, y, 5, "open ink") }, e.text)
+		key(func(x, y float64) { c.marker(e.shape, x+5, y, 5, "open ink") }, e.text, "")
 	}
 
 	p = picture{ID: "picture-orbit", Title: "The orbit", SVG: c.String()}

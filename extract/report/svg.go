@@ -100,7 +100,7 @@ func (c *canvas) hatch() string {
 
 // fillRect fills a rectangle with a declared pattern.
 func (c *canvas) fillRect(x, y, w, h float64, pattern string) {
-	c.b.WriteString(`<rect x="` + px(x) + `" y="` + px(y) + `" width="` + px(w) + `" height="` + px(h) + `" fill="url(#` + pattern + `)"/>`)
+	c.b.WriteString(`<rect x="` + px(x) + `" y="` + px(y) + `" width="` + px(w) + `" height="` + px(h) + `" style="fill:url(#` + pattern + `)"/>`)
 }
 
 // markers is the number of shapes that marker knows; a series keeps its shape,
@@ -229,7 +229,8 @@ func newPanel(c *canvas, name string, x, y axis, xTitle, yTitle string, yTicks i
 	return p
 }
 
-// startUp hatches the part of the panel before u = until and says what it is.
+// startUp veils and hatches the part of the panel before u = until and says what
+// it is. Drawn after the curves, it lets them show through faintly.
 func (p *panel) startUp(pattern string, until float64, say bool) {
 	end := math.Min(until, p.x.hi)
 	if !(end > p.x.lo) {

@@ -3,6 +3,7 @@ package report
 import (
 	"sort"
 	"strconv"
+	"strings"
 
 	"nullmark/extract/result"
 )
@@ -10,14 +11,35 @@ import (
 // value appends the two cells of a number: value and bar.
 func value(cells []cell, q *result.Q, n notation) []cell {
 	if q == nil {
-		return append(cells, cell{missing, "num"}, cell{missing, "num bar"})
+		return append(cells, cell{missing, "num value"}, cell{missing, "num bar"})
 	}
 	f := write(*q, n)
 	bar := f.Bar
 	if !f.Good {
 		bar = missing
 	}
-	return append(cells, cell{f.Value, "num"}, cell{bar, "num bar"})
+	return append(cells, cell{f.Value, "num value"}, cell{bar, "num bar"})
+}
+
+// level puts a blank before the values of a column that holds signs elsewhere,
+// so that their decimal points stand below each other, and sets their headings
+// to the left as well.
+func level(tables []table) []table {
+	for _, t := range tables {
+		for column := 0; len(t.Rows) > 0 && column < len(t.Rows[0].Cells); column++ {
+			signed := false
+			t.Heads[len(t.Rows[0].Heads)+column].Left = t.Rows[0].Cells[column].Class == "num value"
+			for _, r := range t.Rows {
+				signed = signed || r.Cells[column].Class == "num value" && strings.HasPrefix(r.Cells[column].Text, "-")
+			}
+			for _, r := range t.Rows {
+				if c := &r.Cells[column]; signed && c.Class == "num value" && !strings.HasPrefix(c.Text, "-") {
+					c.Text = "\u00a0" + c.Text
+				}
+			}
+		}
+	}
+	return tables
 }
 
 // quantity picks energy or angular momentum of a flux that may be absent.
@@ -59,7 +81,7 @@ func endsTable(id, caption, measure string, infinity, horizon *result.Flux) []ta
 	}
 	t := table{ID: id, Caption: caption, Heads: []head{{Text: "where"}}}
 	for _, q := range quantities() {
-		t.Heads = append(t.Heads, head{q.name + " " + lossWord(measure), q.unit(measure), true}, head{"bar", q.unit(measure), true})
+		t.Heads = append(t.Heads, head{Text: q.name + " " + lossWord(measure), Unit: q.unit(measure), Num: true}, head{Text: "bar", Unit: q.unit(measure), Num: true})
 	}
 	add := func(name string, f *result.Flux) {
 		if f == nil {
@@ -98,10 +120,10 @@ func fluxTables(r *result.Result) []table {
 			t.Heads = append(t.Heads, head{Text: "counts"})
 		}
 		if hasInf {
-			t.Heads = append(t.Heads, head{"to null infinity", q.unit(measure), true}, head{"bar", q.unit(measure), true})
+			t.Heads = append(t.Heads, head{Text: "to null infinity", Unit: q.unit(measure), Num: true}, head{Text: "bar", Unit: q.unit(measure), Num: true})
 		}
 		if hasHor {
-			t.Heads = append(t.Heads, head{"into the horizon", q.unit(measure), true}, head{"bar", q.unit(measure), true})
+			t.Heads = append(t.Heads, head{Text: "into the horizon", Unit: q.unit(measure), Num: true}, head{Text: "bar", Unit: q.unit(measure), Num: true})
 		}
 		t.Heads = append(t.Heads, head{Text: "asked accuracy"})
 		for _, m := range r.Modes {
@@ -139,7 +161,7 @@ func verdict(m result.Mode) cell {
 
 func strainTable(r *result.Result) []table {
 	t := table{ID: "modes-strain", Caption: "Strain in the particle’s phase, r h e^{i m φp(u)}/μ, at null infinity",
-		Heads: []head{{Text: "l"}, {Text: "m"}, {"real part", "1", true}, {"bar", "1", true}, {"imaginary part", "1", true}, {"bar", "1", true}}}
+		Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "real part", Unit: "1", Num: true}, {Text: "bar", Unit: "1", Num: true}, {Text: "imaginary part", Unit: "1", Num: true}, {Text: "bar", Unit: "1", Num: true}}}
 	for _, m := range r.Modes {
 		if m.Strain == nil {
 			continue
@@ -169,10 +191,10 @@ func perMTables(r *result.Result) []table {
 	for _, q := range quantities() {
 		t := table{ID: "per-m-" + q.id, Caption: q.name + " summed over l at each m, " + lossWord(measure), Heads: []head{{Text: "m"}}}
 		if hasInf {
-			t.Heads = append(t.Heads, head{"to null infinity", q.unit(measure), true}, head{"bar", q.unit(measure), true})
+			t.Heads = append(t.Heads, head{Text: "to null infinity", Unit: q.unit(measure), Num: true}, head{Text: "bar", Unit: q.unit(measure), Num: true})
 		}
 		if hasHor {
-			t.Heads = append(t.Heads, head{"into the horizon", q.unit(measure), true}, head{"bar", q.unit(measure), true})
+			t.Heads = append(t.Heads, head{Text: "into the horizon", Unit: q.unit(measure), Num: true}, head{Text: "bar", Unit: q.unit(measure), Num: true})
 		}
 		t.Heads = append(t.Heads, head{Text: "sum over l"})
 		for _, m := range r.PerM {
@@ -197,7 +219,7 @@ func perMTables(r *result.Result) []table {
 
 func peakTable(r *result.Result) []table {
 	t := table{ID: "peaks", Caption: "The maximum of |r h/μ| of each mode",
-		Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "number"}, {Text: "unit"}, {"value", "", true}, {"bar", "", true}}}
+		Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "number"}, {Text: "unit"}, {Text: "value", Unit: "", Num: true}, {Text: "bar", Unit: "", Num: true}}}
 	for _, m := range r.Modes {
 		if m.Peak == nil {
 			continue
@@ -232,7 +254,7 @@ func recoilTable(r *result.Result) []table {
 		return nil
 	}
 	k := r.Total.Recoil
-	t := table{ID: "recoil", Caption: "Recoil of the whole system", Heads: []head{{Text: "component"}, {"value", "μ²/M²", true}, {"bar", "μ²/M²", true}}}
+	t := table{ID: "recoil", Caption: "Recoil of the whole system", Heads: []head{{Text: "component"}, {Text: "value", Unit: "μ²/M²", Num: true}, {Text: "bar", Unit: "μ²/M²", Num: true}}}
 	for _, e := range []struct {
 		name string
 		q    result.Q
@@ -246,7 +268,7 @@ func ringingTables(r *result.Result) []table {
 	var out []table
 	if len(r.Ringing) > 0 {
 		t := table{ID: "ringing", Caption: "Fitted ringing, e^{−iωu}", Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "n"}, {Text: "where"},
-			{"Re ω", "1/M", true}, {"bar", "1/M", true}, {"Im ω", "1/M", true}, {"bar", "1/M", true}}}
+			{Text: "Re ω", Unit: "1/M", Num: true}, {Text: "bar", Unit: "1/M", Num: true}, {Text: "Im ω", Unit: "1/M", Num: true}, {Text: "bar", Unit: "1/M", Num: true}}}
 		for _, g := range r.Ringing {
 			line := row{Heads: []string{strconv.Itoa(g.L), strconv.Itoa(g.M), strconv.Itoa(g.N)}}
 			line.Cells = append(line.Cells, cell{clean(g.Where), ""})
@@ -257,7 +279,7 @@ func ringingTables(r *result.Result) []table {
 		out = append(out, t)
 	}
 	if len(r.Tail) > 0 {
-		t := table{ID: "tails", Caption: "Fitted late-time decay, a power of time", Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "where"}, {"exponent", "1", true}, {"bar", "1", true}}}
+		t := table{ID: "tails", Caption: "Fitted late-time decay, a power of time", Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "where"}, {Text: "exponent", Unit: "1", Num: true}, {Text: "bar", Unit: "1", Num: true}}}
 		for _, g := range r.Tail {
 			line := row{Heads: []string{strconv.Itoa(g.L), strconv.Itoa(g.M)}}
 			line.Cells = value([]cell{{clean(g.Where), ""}}, &g.Exponent, readable)
@@ -272,7 +294,7 @@ func orbitTables(o *result.Orbit) []table {
 	if o == nil {
 		return nil
 	}
-	t := table{ID: "orbit-numbers", Caption: "What follows from the orbit (" + clean(o.Kind) + "), to double precision", Heads: []head{{Text: "number"}, {"value", "", true}, {Text: "unit"}}}
+	t := table{ID: "orbit-numbers", Caption: "What follows from the orbit (" + clean(o.Kind) + "), to double precision", Heads: []head{{Text: "number"}, {Text: "value", Unit: "", Num: true}, {Text: "unit"}}}
 	add := func(name string, v float64, unit string) {
 		t.Rows = append(t.Rows, row{Heads: []string{name}, Cells: []cell{{plainNumber(v), "num"}, {unit, ""}}})
 	}
@@ -292,7 +314,7 @@ func orbitTables(o *result.Orbit) []table {
 	if len(o.Markers) > 0 {
 		keys := sortedKeys(o.Markers)
 		sort.SliceStable(keys, func(a, b int) bool { return o.Markers[keys[a]] < o.Markers[keys[b]] })
-		t := table{ID: "orbit-markers", Caption: "When the particle passes", Heads: []head{{Text: "marker"}, {"time", "M", true}}}
+		t := table{ID: "orbit-markers", Caption: "When the particle passes", Heads: []head{{Text: "marker"}, {Text: "time", Unit: "M", Num: true}}}
 		for _, key := range keys {
 			t.Rows = append(t.Rows, row{Heads: []string{label(key)}, Cells: []cell{{plainNumber(o.Markers[key]), "num"}}})
 		}
@@ -309,12 +331,12 @@ func rungTable(r *result.Result) []table {
 	for _, g := range r.Rungs {
 		angular = angular || g.Angular > 0
 	}
-	t := table{ID: "rungs", Caption: "The ladder of resolutions that was run", Heads: []head{{Text: "rung"}, {Text: "modes"}, {"points", "", true}, {"spacing", "M", true}, {"time step", "M", true},
-		{"kernel width", "M", true}, {"vanishing moments", "", true}, {"order", "", true}}}
+	t := table{ID: "rungs", Caption: "The ladder of resolutions that was run", Heads: []head{{Text: "rung"}, {Text: "modes"}, {Text: "points", Unit: "", Num: true}, {Text: "spacing", Unit: "M", Num: true}, {Text: "time step", Unit: "M", Num: true},
+		{Text: "kernel width", Unit: "M", Num: true}, {Text: "vanishing moments", Unit: "", Num: true}, {Text: "order", Unit: "", Num: true}}}
 	if angular {
-		t.Heads = append(t.Heads, head{"coupled l", "", true})
+		t.Heads = append(t.Heads, head{Text: "coupled l", Unit: "", Num: true})
 	}
-	t.Heads = append(t.Heads, head{"until", "M", true}, head{"cost", "core s", true})
+	t.Heads = append(t.Heads, head{Text: "until", Unit: "M", Num: true}, head{Text: "cost", Unit: "core s", Num: true})
 	for i, g := range r.Rungs {
 		num := func(s string) cell { return cell{s, "num"} }
 		cells := []cell{{clean(g.Modes), ""}, num(strconv.Itoa(g.Points)), num(settingNumber(g.Dx)), num(settingNumber(g.Dt)),

@@ -25,6 +25,7 @@ type head struct {
 	Text string
 	Unit string
 	Num  bool // numbers: aligned right
+	Left bool // numbers whose decimal points stand below each other: aligned left
 }
 
 type row struct {
@@ -153,15 +154,15 @@ func view(b *result.Bundle) page {
 	}
 	if t := r.Total; t != nil {
 		p.Totals = endsTable("total", "Total over all modes, "+lossWord(measure), measure, t.Infinity, t.Horizon)
-		p.Totals = append(p.Totals, recoilTable(r)...)
+		p.Totals = level(append(p.Totals, recoilTable(r)...))
 		if tr := t.Truncation; tr != nil {
 			p.Truncation = endsTable("truncation", fmt.Sprintf("Estimated part beyond l = %d, already contained in the total", tr.LMax), measure, tr.Infinity, tr.Horizon)
 			p.TruncNote = clean(tr.Note)
 		}
 	}
-	p.Modes = append(append(append(fluxTables(r), strainTable(r)...), perMTables(r)...), peakTable(r)...)
+	p.Modes = level(append(append(append(fluxTables(r), strainTable(r)...), perMTables(r)...), peakTable(r)...))
 	p.ModesNote = countsSentence(r.Modes)
-	p.Ringing = ringingTables(r)
+	p.Ringing = level(ringingTables(r))
 	for _, pic := range pictures(b) {
 		p.Pictures = append(p.Pictures, drawn{pic.ID, pic.Title, pic.Caption, template.HTML(pic.SVG)})
 	}

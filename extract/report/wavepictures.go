@@ -12,7 +12,7 @@ import (
 
 const (
 	plotLeft  = 78.0
-	plotRight = 660.0 // leaves room for labels at the ends of curves
+	plotRight = 632.0 // leaves room for labels at the ends of curves
 )
 
 // strongest returns the indices of up to n modes in order of the largest |Wave|
@@ -111,7 +111,6 @@ func wavePicture(s *result.Series, id, title string, lo, hi float64, count int) 
 		}
 		p := newPanel(c, fmt.Sprint("frame", row), x, y, xTitle, "", 4)
 		c.upright(16, y0+high/2, "name", waveName(s)+" "+names[row])
-		p.startUp(hatch, s.JunkUntil, row == 0)
 		minus := make([]float64, len(size))
 		for k, v := range size {
 			minus[k] = -v
@@ -119,6 +118,7 @@ func wavePicture(s *result.Series, id, title string, lo, hi float64, count int) 
 		p.curve(s.U, re, "wave")
 		p.curve(s.U, size, "hull")
 		p.curve(s.U, minus, "hull")
+		p.startUp(hatch, s.JunkUntil, row == 0)
 		c.text(plotRight+10, y0+high/2-14, "label strong", "start", names[row])
 		c.line(plotRight+10, y0+high/2+2, plotRight+30, y0+high/2+2, "wave")
 		c.text(plotRight+36, y0+high/2+6, "tick", "start", "real part")
@@ -224,8 +224,8 @@ func amplitudePicture(s *result.Series) (picture, bool) {
 	title := "Amplitudes on a logarithmic axis"
 	c := newCanvas("amplitude", pictureWidth, 332, title, "Amplitude of the strongest modes against retarded time, logarithmic; "+endValues(curves))
 	p := newPanel(c, "frame", axis{lo: lo, hi: hi, from: plotLeft, to: plotRight}, y, "retarded time u  (M)", "|"+waveName(s)+"|", 8)
-	p.startUp(c.hatch(), s.JunkUntil, true)
 	overview(p, curves)
+	p.startUp(c.hatch(), s.JunkUntil, true)
 	return picture{ID: "picture-amplitude", Title: title, SVG: c.String(),
 		Caption: "Each mode has its own dash and marker and is named at its end. Error bars are shown with the convergence evidence below."}, true
 }
@@ -293,9 +293,9 @@ func evidencePicture(s *result.Series) (picture, bool) {
 		if n := min(len(s.U), len(mode.WaveErr)); band != "" && strings.Count(band, "M") == 1 {
 			c.path(band+"L"+px(p.x.at(s.U[n-1]))+" "+px(y.from)+"L"+px(p.x.at(s.U[0]))+" "+px(y.from)+"Z", "band", p.clip)
 		}
-		p.startUp(hatch, s.JunkUntil, row == 0)
 		c.path(band, "bandedge", p.clip)
 		p.curve(s.U, mode.Evidence, "wave")
+		p.startUp(hatch, s.JunkUntil, row == 0)
 		at := y0 + high/2
 		c.text(plotRight+10, at-14, "label strong", "start", modeName(mode.L, mode.M))
 		c.line(plotRight+10, at+2, plotRight+30, at+2, "wave")
