@@ -208,7 +208,7 @@ func figures(root *node) string {
 func TestPageHoldsWhatTheResultHasInOrder(t *testing.T) {
 	want := map[string][2]string{
 		"circular":     {"Total | Modes | Pictures | Conventions | Orbit | Resolutions | Warnings | Provenance | Loading the data", "orbit wave amplitude flux budget evidence"},
-		"plunge":       {"Total | Modes | Pictures | Conventions | Orbit | Loading the data", "orbit wave peak amplitude flux"},
+		"plunge":       {"Total | Modes | Pictures | Conventions | Orbit | Loading the data", "orbit wave peak amplitude flux evidence"},
 		"spinning":     {"Total | Modes | Pictures", "flux"},
 		"pulse":        {"Ringing and decay | Pictures | Loading the data", "wave amplitude evidence"},
 		"bare":         {"", ""},

@@ -62,18 +62,18 @@ func (l columns) draw(c *canvas, left, y, top float64) {
 	every := max(1, int(math.Ceil(13/l.slot)))
 	for i, m := range l.modes {
 		if m.M%every == 0 {
-			c.text(l.at[i], y+14, "small", "middle", strconv.Itoa(m.M))
+			c.text(l.at[i], y+18, "small", "middle", strconv.Itoa(m.M))
 		}
 	}
-	c.text(left-8, y+14, "tick", "end", "m")
-	c.text(left-8, y+32, "tick", "end", "l")
+	c.text(left-8, y+18, "tick", "end", "m")
+	c.text(left-8, y+35, "tick", "end", "l")
 	lastText := -100.0
 	for g, edge := range l.edges {
 		if g < len(l.edges)-1 {
-			c.line(edge, top, edge, y+36, "border")
+			c.line(edge, top, edge, y+40, "border")
 		}
 		if l.mid[g]-lastText >= 16 {
-			c.text(l.mid[g], y+32, "tick strong", "middle", strconv.Itoa(l.l[g]))
+			c.text(l.mid[g], y+35, "tick strong", "middle", strconv.Itoa(l.l[g]))
 			lastText = l.mid[g]
 		}
 	}
@@ -121,18 +121,23 @@ func fluxPicture(r *result.Result) (picture, bool) {
 	y.lo, y.hi = logRange(small, big, 34)
 	title := "Energy by mode"
 	unit := energyUnit(measure)
-	c := newCanvas("flux", pictureWidth, bottom+44, title, "Energy in each mode on a logarithmic axis, with the size of each error bar; the values stand in the table of energies.")
+	c := newCanvas("flux", pictureWidth, bottom+48, title, "Energy in each mode on a logarithmic axis, with the size of each error bar; the values stand in the table of energies.")
 	newPanel(c, "frame", axis{from: left, to: right, bare: true}, y, "", "|energy|  ("+unit+")", 9)
 	l := layOut(r.Modes, left, right)
 	l.draw(c, left, bottom, top)
 	mark := math.Max(2, math.Min(4, l.slot*0.2))
+	x := left
 	for e, end := range ends {
 		for i := range l.modes {
 			f := end.of(&l.modes[i])
 			if f == nil || !write(f.Energy, scientific).Good || f.Energy.Value == 0 {
 				continue
 			}
-			at, v, bar := l.at[i]+end.shift*l.slot, math.Abs(f.Energy.Value), f.Energy.Error
+			shift := 0.0
+			if has[0] && has[1] {
+				shift = end.shift * l.slot
+			}
+			at, v, bar := l.at[i]+shift, math.Abs(f.Energy.Value), f.Energy.Error
 			yv := y.at(v)
 			if bar > 0 {
 				yb := y.at(bar)
@@ -150,12 +155,12 @@ func fluxPicture(r *result.Result) (picture, bool) {
 			c.marker(shape, at, yv, mark, end.class)
 		}
 		if has[e] {
-			x := left + 190*float64(e)
 			c.marker(end.shape, x+6, 15, 4, end.class)
 			c.text(x+16, 19, "label", "start", end.name)
+			x += 170
 		}
 	}
-	x := left + 380
+	x += 6
 	c.line(x, 8, x, 24, "stem s0")
 	c.line(x-5, 24, x+5, 24, "foot s0")
 	c.text(x+12, 19, "label", "start", "size of its error bar")
@@ -193,7 +198,7 @@ func budgetPicture(r *result.Result) (picture, bool) {
 	y := axis{from: bottom, to: top, log: true}
 	y.lo, y.hi = logRange(small, big, 20)
 	title := "What the error bars are made of"
-	c := newCanvas("budget", pictureWidth, bottom+44, title,
+	c := newCanvas("budget", pictureWidth, bottom+48, title,
 		"Parts of the relative error bar of each mode ("+strings.Join(names, ", ")+") on a logarithmic axis, with a line at the asked accuracy "+askedNumber(asked)+".")
 	newPanel(c, "frame", axis{from: left, to: right, bare: true}, y, "", "relative error of the strain", 9)
 	l := layOut(r.Modes, left, right)

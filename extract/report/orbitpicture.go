@@ -72,6 +72,8 @@ func orbitPicture(r *result.Result, s *result.Series) (p picture, ok bool) {
 			return
 		}
 		if radius < half*1.4 {
+			// A white line below keeps the circle visible across a dense path.
+			c.b.WriteString(`<circle cx="` + px(x.at(0)) + `" cy="` + px(y.at(0)) + `" r="` + px(radius*scale) + `" class="under" clip-path="url(#` + pan.clip + `)"/>`)
 			c.b.WriteString(`<circle cx="` + px(x.at(0)) + `" cy="` + px(y.at(0)) + `" r="` + px(radius*scale) + `" class="` + class + `" clip-path="url(#` + pan.clip + `)"/>`)
 		}
 		key(func(x, y float64) {
@@ -82,12 +84,11 @@ func orbitPicture(r *result.Result, s *result.Series) (p picture, ok bool) {
 			c.line(x-8, y, x+18, y, class)
 		}, text, "r = "+settingNumber(radius)+" M")
 	}
+	d, cut, first, last := track(x, y, s.R[:n], s.Phi[:n])
+	c.path(d, "track", pan.clip)
 	circle(KeyISCO, "isco", "innermost stable orbit")
 	circle(KeyLightRing, "ring", "light ring")
 	circle(KeyHorizon, "hole", "the hole's horizon")
-
-	d, cut, first, last := track(x, y, s.R[:n], s.Phi[:n])
-	c.path(d, "track", pan.clip)
 	key(func(x, y float64) { c.line(x-8, y, x+18, y, "track") }, "path of the particle", "")
 	ends := []struct {
 		i     int

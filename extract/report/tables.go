@@ -69,7 +69,7 @@ func quantities() []quantity {
 // lossWord names what a number counts: a rate or a total.
 func lossWord(measure string) string {
 	if measure == total {
-		return "radiated in total"
+		return "over the whole motion"
 	}
 	return "per coordinate time"
 }

@@ -153,7 +153,7 @@ func view(b *result.Bundle) page {
 		p.Warnings = append(p.Warnings, clean(w))
 	}
 	if t := r.Total; t != nil {
-		p.Totals = endsTable("total", "Total over all modes, "+lossWord(measure), measure, t.Infinity, t.Horizon)
+		p.Totals = endsTable("total", "Total over all modes", measure, t.Infinity, t.Horizon)
 		p.Totals = level(append(p.Totals, recoilTable(r)...))
 		if tr := t.Truncation; tr != nil {
 			p.Truncation = endsTable("truncation", fmt.Sprintf("Estimated part beyond l = %d, already contained in the total", tr.LMax), measure, tr.Infinity, tr.Horizon)

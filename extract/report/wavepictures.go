@@ -74,6 +74,14 @@ func waveName(s *result.Series) string {
 	return "r h/μ"
 }
 
+// startUpWords explains the hatched part of a picture that begins at u = lo.
+func startUpWords(s *result.Series, lo float64) string {
+	if !(s.JunkUntil > lo) {
+		return ""
+	}
+	return " Hatched: the start-up of the evolution, up to u = " + settingNumber(s.JunkUntil) + " M, which is never compared."
+}
+
 // wavePicture draws real part and amplitude of the strongest modes between two
 // retarded times, one panel a mode.
 func wavePicture(s *result.Series, id, title string, lo, hi float64, count int) (picture, bool) {
@@ -126,7 +134,7 @@ func wavePicture(s *result.Series, id, title string, lo, hi float64, count int) 
 		c.text(plotRight+36, y0+high/2+24, "tick", "start", "± amplitude")
 	}
 	p := picture{ID: "picture-" + id, Title: title, SVG: c.String()}
-	p.Caption = "Real part (solid) and plus and minus the amplitude (dashed) at null infinity of the strongest modes."
+	p.Caption = "Real part (solid) and plus and minus the amplitude (dashed) at null infinity of the strongest modes." + startUpWords(s, lo)
 	return p, true
 }
 
@@ -226,8 +234,9 @@ func amplitudePicture(s *result.Series) (picture, bool) {
 	p := newPanel(c, "frame", axis{lo: lo, hi: hi, from: plotLeft, to: plotRight}, y, "retarded time u  (M)", "|"+waveName(s)+"|", 8)
 	overview(p, curves)
 	p.startUp(c.hatch(), s.JunkUntil, true)
-	return picture{ID: "picture-amplitude", Title: title, SVG: c.String(),
-		Caption: "Each mode has its own dash and marker and is named at its end. Error bars are shown with the convergence evidence below."}, true
+	done := picture{ID: "picture-amplitude", Title: title, SVG: c.String()}
+	done.Caption = "Each mode has its own dash and marker and is named at its end. The error bars have a picture of their own below." + startUpWords(s, lo)
+	return done, true
 }
 
 // endValues says in words where each curve ends.
@@ -244,45 +253,42 @@ func endValues(curves []curveEntry) string {
 	return strings.Join(out, ", ") + "."
 }
 
-// evidencePicture draws, for the strongest modes, the difference between the
-// two finest rungs against u, over the band that the error bar claims.
+// evidencePicture draws, for the strongest modes, the error bar of the stored
+// samples as a band and, where it was kept, the difference between the two
+// finest rungs in it.
 func evidencePicture(s *result.Series) (picture, bool) {
 	lo, hi, ok := span(s)
 	if !ok {
 		return picture{}, false
 	}
 	var modes []int
+	compared := false
 	for _, i := range strongest(s, len(s.Modes)) {
-		if len(s.Modes[i].Evidence) > 1 && len(modes) < 3 {
+		mode := &s.Modes[i]
+		if len(modes) < 3 && max(len(mode.Evidence), len(mode.WaveErr)) > 1 {
 			modes = append(modes, i)
+			compared = compared || len(mode.Evidence) > 1
 		}
 	}
 	if len(modes) == 0 {
 		return picture{}, false
 	}
 	const high, gap, top = 140.0, 18.0, 14.0
-	title := "Convergence: the difference between rungs"
-	c := newCanvas("evidence", pictureWidth, top+float64(len(modes))*(high+gap)+34, title,
-		"For the strongest modes, the absolute difference between the two finest rungs against retarded time, on a logarithmic axis, over a band that reaches up to the claimed error bar.")
+	title := "The error bar of the stored samples"
+	desc := "For the strongest modes, a band that reaches up to the claimed error bar, against retarded time on a logarithmic axis."
+	caption := "Dashed, with the band below it: the error bar claimed for the stored samples of |" + waveName(s) + "|."
+	if compared {
+		title = "Convergence: the difference between rungs"
+		desc = "For the strongest modes, the absolute difference between the two finest rungs against retarded time, on a logarithmic axis, over a band that reaches up to the claimed error bar."
+		caption = "Solid: absolute difference of " + waveName(s) + " between the two finest rungs. Dashed, with the band below it: the error bar claimed for the stored samples. After the start-up the difference should stay inside the band."
+	}
+	c := newCanvas("evidence", pictureWidth, top+float64(len(modes))*(high+gap)+34, title, desc)
 	hatch := c.hatch()
 	for row, i := range modes {
 		mode := &s.Modes[i]
-		small, big := math.Inf(1), 0.0
-		see := func(ys []float64) {
-			for k, v := range ys[:min(len(ys), len(s.U))] {
-				if s.U[k] >= s.JunkUntil && v > 0 && finite(v) {
-					small, big = math.Min(small, v), math.Max(big, v)
-				}
-			}
-		}
-		see(mode.Evidence)
-		see(mode.WaveErr)
-		if big == 0 {
-			small, big = 1e-16, 1e-15
-		}
 		y0 := top + float64(row)*(high+gap)
 		y := axis{from: y0 + high, to: y0, log: true}
-		y.lo, y.hi = logRange(small, big*3, 9)
+		y.lo, y.hi = evidenceRange(s, mode)
 		xTitle := ""
 		if row == len(modes)-1 {
 			xTitle = "retarded time u  (M)"
@@ -290,7 +296,7 @@ func evidencePicture(s *result.Series) (picture, bool) {
 		p := newPanel(c, fmt.Sprint("frame", row), axis{lo: lo, hi: hi, from: plotLeft, to: plotRight}, y, xTitle, "", 5)
 		c.upright(16, y0+high/2, "name", waveName(s)+" "+modeName(mode.L, mode.M))
 		band := thinned(p.x, p.y, s.U, mode.WaveErr)
-		if n := min(len(s.U), len(mode.WaveErr)); band != "" && strings.Count(band, "M") == 1 {
+		if n := min(len(s.U), len(mode.WaveErr)); strings.Count(band, "M") == 1 {
 			c.path(band+"L"+px(p.x.at(s.U[n-1]))+" "+px(y.from)+"L"+px(p.x.at(s.U[0]))+" "+px(y.from)+"Z", "band", p.clip)
 		}
 		c.path(band, "bandedge", p.clip)
@@ -298,11 +304,34 @@ func evidencePicture(s *result.Series) (picture, bool) {
 		p.startUp(hatch, s.JunkUntil, row == 0)
 		at := y0 + high/2
 		c.text(plotRight+10, at-14, "label strong", "start", modeName(mode.L, mode.M))
-		c.line(plotRight+10, at+2, plotRight+30, at+2, "wave")
-		c.text(plotRight+36, at+6, "tick", "start", "difference")
-		c.line(plotRight+10, at+20, plotRight+30, at+20, "bandedge")
-		c.text(plotRight+36, at+24, "tick", "start", "error bar")
+		key := func(class, text string) {
+			c.line(plotRight+10, at+2, plotRight+30, at+2, class)
+			c.text(plotRight+36, at+6, "tick", "start", text)
+			at += 18
+		}
+		if len(mode.Evidence) > 1 {
+			key("wave", "difference")
+		}
+		if band != "" {
+			key("bandedge", "error bar")
+		}
 	}
-	return picture{ID: "picture-evidence", Title: title, SVG: c.String(),
-		Caption: "Solid: absolute difference of " + waveName(s) + " between the two finest rungs. Dashed, with the band below it: the error bar claimed for the stored samples. After the start-up the difference should stay inside the band."}, true
+	return picture{ID: "picture-evidence", Title: title, SVG: c.String(), Caption: caption + startUpWords(s, lo)}, true
+}
+
+// evidenceRange is the range of the vertical axis that holds differences and
+// bars after the start-up.
+func evidenceRange(s *result.Series, mode *result.ModeSeries) (lo, hi float64) {
+	small, big := math.Inf(1), 0.0
+	for _, ys := range [][]float64{mode.Evidence, mode.WaveErr} {
+		for k, v := range ys[:min(len(ys), len(s.U))] {
+			if s.U[k] >= s.JunkUntil && v > 0 && finite(v) {
+				small, big = math.Min(small, v), math.Max(big, v)
+			}
+		}
+	}
+	if big == 0 {
+		small, big = 1e-16, 1e-15
+	}
+	return logRange(small, 3*big, 9)
 }
