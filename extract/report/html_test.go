@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"encoding/xml"
 	"errors"
+	"flag"
 	"fmt"
 	"image"
 	_ "image/png"
@@ -19,6 +20,8 @@ import (
 
 	"nullmark/extract/result"
 )
+
+var keep = flag.String("keep", "", "directory in which the drawn pages are left")
 
 // node is one element of the parsed page.
 type node struct {
@@ -267,6 +270,37 @@ func TestPageOpensWithTheAnswer(t *testing.T) {
 	}
 }
 
+// TestLongRunStaysSmall draws a run of many revolutions whose samples are as
+// rough as they can be.
+func TestLongRunStaysSmall(t *testing.T) {
+	b := circular()
+	s := b.Series
+	s.U, s.T, s.R, s.Phi = nil, nil, nil, nil
+	for k := range 60000 {
+		u := 0.5 * float64(k)
+		s.U, s.T = append(s.U, u), append(s.T, u)
+		r := 4 + 30*math.Pow(1-u/30001, 0.25)
+		s.R, s.Phi = append(s.R, r), append(s.Phi, 300*2*math.Pi*u/30000)
+	}
+	for i := range s.Modes {
+		m := &s.Modes[i]
+		size := m.Wave[len(m.Wave)-1]
+		m.Wave, m.WaveErr, m.Evidence = nil, nil, nil
+		for k := range s.U {
+			rough := 1 + 0.9*math.Sin(float64(k*k%1009))
+			m.Wave = append(m.Wave, size*complex(rough, 0))
+			m.WaveErr = append(m.WaveErr, 1e-10*rough)
+			m.Evidence = append(m.Evidence, 1e-11*rough)
+		}
+	}
+	page := render(t, b)
+	parsePage(t, page)
+	t.Logf("%d bytes", len(page))
+	if len(page) >= 1<<20 {
+		t.Errorf("the page has %d bytes, want less than one megabyte", len(page))
+	}
+}
+
 func TestHostileTextIsInert(t *testing.T) {
 	evil := "<script>alert(1)</script>\"'><img src=x onerror=alert(2)>&amp;</title></style>]]>\x00\x1b[31m\u202E\xff"
 	b := circular()
@@ -351,8 +385,8 @@ func TestThinnedCurveKeepsItsExtremes(t *testing.T) {
 }
 
 // TestBrowserDrawsThePage renders the page in headless Chromium where one is
-// installed, and checks that ink is on it from top to bottom. With
-// NULLMARK_REPORT_DIR set the pages and pictures are kept there for looking.
+// installed, and checks that ink is on it from top to bottom. With -keep DIR
+// the pages of every kind and their pictures are left in DIR for looking at.
 func TestBrowserDrawsThePage(t *testing.T) {
 	browser, err := exec.LookPath("chromium")
 	if err != nil {
@@ -361,8 +395,8 @@ func TestBrowserDrawsThePage(t *testing.T) {
 	}
 	names := []string{"circular"}
 	dir := t.TempDir()
-	if keep := os.Getenv("NULLMARK_REPORT_DIR"); keep != "" {
-		dir = keep
+	if *keep != "" {
+		dir = *keep
 		names = []string{"circular", "plunge", "spinning", "pulse"}
 	}
 	for _, name := range names {
@@ -387,7 +421,7 @@ func TestBrowserDrawsThePage(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if err := inked(img, 8); err != nil && name == "circular" {
+		if err := inked(img, 8); err != nil && name == "circular" { // the others are shorter than the window
 			t.Errorf("%s: %v", name, err)
 		}
 	}

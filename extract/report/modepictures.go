@@ -135,7 +135,7 @@ func fluxPicture(r *result.Result) (picture, bool) {
 			}
 			shift := 0.0
 			if has[0] && has[1] {
-				shift = end.shift * l.slot
+				shift = math.Copysign(math.Min(math.Abs(end.shift)*l.slot, 9), end.shift)
 			}
 			at, v, bar := l.at[i]+shift, math.Abs(f.Energy.Value), f.Energy.Error
 			yv := y.at(v)

@@ -29,8 +29,8 @@ const missing = "–"
 
 // write renders value and bar: the bar rounded up to two significant digits,
 // the value rounded to nearest at the bar's last place. A value is never given
-// more than seventeen digits; a bar below the last of them counts as one unit
-// there. A zero bar means exact, and the value is written in full.
+// more than seventeen digits; a bar that lies below the last of them is rounded
+// up to it in the parentheses. A zero bar means exact, and the value is written in full.
 func write(q result.Q, n notation) figure {
 	if math.IsNaN(q.Value) || math.IsInf(q.Value, 0) || math.IsNaN(q.Error) || math.IsInf(q.Error, 0) || q.Error < 0 {
 		return figure{Value: "no certified number"}
@@ -41,8 +41,12 @@ func write(q result.Q, n notation) figure {
 	unit, place := roundUp(q.Error)
 	bar := decimal(strconv.Itoa(unit), "", place, n)
 	if q.Value != 0 {
-		if last := exponent(q.Value) - 16; place < last {
-			unit, place = 1, last
+		for last := exponent(q.Value) - 16; place < last; place++ {
+			if unit == 1 {
+				place = last
+				break
+			}
+			unit = (unit + 9) / 10
 		}
 	}
 	digits, negative := roundAt(q.Value, place)

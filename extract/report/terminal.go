@@ -132,7 +132,10 @@ func fluxLines(r *result.Result, width int) []string {
 			}
 			grid = append(grid, line)
 		}
-		return aligned(grid)
+		for column := 1; column < len(grid[0]); column += 2 {
+			levelColumn(grid, column)
+		}
+		return aligned(grid, func(column int) bool { return column%2 == 1 })
 	}
 	title := "Energy " + lossWord(measureOf(r)) + " in " + energyUnit(measureOf(r))
 	if countsSentence(r.Modes) != "" && r.Modes[0].Counts == "both signs of m" {
@@ -146,7 +149,7 @@ func fluxLines(r *result.Result, width int) []string {
 		}
 	}
 	if hidden > 0 {
-		out = append(out, wrap(fmt.Sprintf("%s more in flux.csv and in report.html", count(hidden, "mode")), width)...)
+		out = append(out, wrap(count(hidden, "more mode")+" in flux.csv and in report.html", width)...)
 	}
 	return out
 }
@@ -160,7 +163,9 @@ func fitLines(r *result.Result) []string {
 			re, im := write(g.Re, readable), write(g.Im, readable)
 			grid = append(grid, []string{modeName(g.L, g.M), fmt.Sprint(g.N), clean(g.Where), re.Value, re.Bar, im.Value, im.Bar})
 		}
-		out = append(out, aligned(grid)...)
+		levelColumn(grid, 3)
+		levelColumn(grid, 5)
+		out = append(out, aligned(grid, func(column int) bool { return column == 2 || column == 3 || column == 5 })...)
 	}
 	if len(r.Tail) > 0 {
 		grid := [][]string{{"decay", "where", "exponent", "± bar"}}
@@ -168,14 +173,29 @@ func fitLines(r *result.Result) []string {
 			e := write(g.Exponent, readable)
 			grid = append(grid, []string{modeName(g.L, g.M), clean(g.Where), e.Value, e.Bar})
 		}
-		out = append(out, aligned(grid)...)
+		levelColumn(grid, 2)
+		out = append(out, aligned(grid, func(column int) bool { return column < 3 })...)
 	}
 	return out
 }
 
-// aligned sets a grid of cells in columns: the first to the left, the others
-// to the right.
-func aligned(grid [][]string) []string {
+// levelColumn puts a blank before the values of a column that holds signs
+// elsewhere, so that decimal points stand below each other.
+func levelColumn(grid [][]string, column int) {
+	signed := false
+	for _, line := range grid[1:] {
+		signed = signed || strings.HasPrefix(line[column], "-")
+	}
+	for _, line := range grid {
+		if signed && !strings.HasPrefix(line[column], "-") {
+			line[column] = " " + line[column]
+		}
+	}
+}
+
+// aligned sets a grid of cells in columns, the first and those that left names
+// to the left, the others to the right.
+func aligned(grid [][]string, left func(column int) bool) []string {
 	var widths []int
 	for _, line := range grid {
 		for i, c := range line {
@@ -193,6 +213,8 @@ func aligned(grid [][]string) []string {
 			switch {
 			case i == 0:
 				b.WriteString(c + space)
+			case left(i):
+				b.WriteString("  " + c + space)
 			default:
 				b.WriteString("  " + space + c)
 			}

@@ -157,6 +157,7 @@ func view(b *result.Bundle) page {
 		p.Totals = level(append(p.Totals, recoilTable(r)...))
 		if tr := t.Truncation; tr != nil {
 			p.Truncation = endsTable("truncation", fmt.Sprintf("Estimated part beyond l = %d, already contained in the total", tr.LMax), measure, tr.Infinity, tr.Horizon)
+			level(p.Truncation)
 			p.TruncNote = clean(tr.Note)
 		}
 	}

@@ -78,40 +78,40 @@ func count(n int, what string) string {
 
 // lossSentence says what leaves the orbit: the answer to the first question.
 func lossSentence(r *result.Result) string {
-	who, verb := "The orbit", "loses energy at the rate"
+	verb, style := "loses energy at the rate", scientific
 	if measureOf(r) == total {
-		verb = "loses the energy"
+		verb, style = "loses the energy", readable
 	}
 	unit := energyUnit(measureOf(r))
 	if t := r.Total; t != nil && (t.Infinity != nil || t.Horizon != nil) {
 		var ends []string
 		if t.Infinity != nil {
-			ends = append(ends, spoken(t.Infinity.Energy, unit)+" to null infinity")
+			ends = append(ends, plusMinus(t.Infinity.Energy, style)+" "+unit+" to null infinity")
 		}
 		if t.Horizon != nil {
-			end := spoken(t.Horizon.Energy, unit) + " into the hole"
+			end := plusMinus(t.Horizon.Energy, style) + " " + unit + " into the hole"
 			if t.Horizon.Energy.Value < 0 {
 				end += " (negative: it gains there)"
 			}
 			ends = append(ends, end)
 		}
-		return fmt.Sprintf("%s %s %s.", who, verb, strings.Join(ends, " and "))
+		return fmt.Sprintf("The orbit %s %s.", verb, strings.Join(ends, " and "))
 	}
 	if len(r.Ringing) > 0 {
 		g := r.Ringing[0]
 		return fmt.Sprintf("The (%d,%d) field rings with M ω = %s − i %s (overtone n = %d, at %s).",
-			g.L, g.M, plusMinus(g.Re), plusMinus(result.Q{Value: -g.Im.Value, Error: g.Im.Error}), g.N, clean(g.Where))
+			g.L, g.M, plusMinus(g.Re, readable), plusMinus(result.Q{Value: -g.Im.Value, Error: g.Im.Error}, readable), g.N, clean(g.Where))
 	}
 	if len(r.Tail) > 0 {
 		g := r.Tail[0]
-		return fmt.Sprintf("The (%d,%d) field decays at late times with the power %s (at %s).", g.L, g.M, plusMinus(g.Exponent), clean(g.Where))
+		return fmt.Sprintf("The (%d,%d) field decays at late times with the power %s (at %s).", g.L, g.M, plusMinus(g.Exponent, readable), clean(g.Where))
 	}
 	return ""
 }
 
 // plusMinus writes value and bar for a sentence: "6.150372549e-5 ± 4.3e-13".
-func plusMinus(q result.Q) string {
-	f := write(q, readable)
+func plusMinus(q result.Q, n notation) string {
+	f := write(q, n)
 	if !f.Good {
 		return f.Value
 	}
@@ -121,8 +121,6 @@ func plusMinus(q result.Q) string {
 	open, shut := strings.IndexByte(f.Value, '('), strings.IndexByte(f.Value, ')')
 	return f.Value[:open] + f.Value[shut+1:] + " ± " + f.Bar
 }
-
-func spoken(q result.Q, unit string) string { return plusMinus(q) + " " + unit }
 
 // metSentence says whether the asked accuracy was reached, and if not, where
 // it failed worst.
