@@ -14,6 +14,7 @@ import (
 	"os/exec"
 	"path/filepath"
 	"regexp"
+	"strconv"
 	"strings"
 	"testing"
 	"time"
@@ -369,13 +370,24 @@ func TestThinnedCurveKeepsItsExtremes(t *testing.T) {
 	ys[77777], ys[123456] = 5, -7
 	x, y := axis{lo: 0, hi: 199999, from: 0, to: 600}, axis{lo: -10, hi: 10, from: 200, to: 0}
 	d := thinned(x, y, xs, ys)
-	if n := strings.Count(d, "L"); n > 4*601 {
-		t.Errorf("%d points for 600 columns", n)
-	}
-	for _, v := range []float64{5, -7} {
-		if !strings.Contains(d, " "+px(y.at(v))) {
-			t.Errorf("the spike to %v was thinned away", v)
+	top, bottom, points := math.Inf(1), math.Inf(-1), 0
+	at := 0.0
+	for _, step := range regexp.MustCompile(`([Ml])\S+ (-?[\d.]+)`).FindAllStringSubmatch(d, -1) {
+		v, err := strconv.ParseFloat(step[2], 64)
+		if err != nil {
+			t.Fatal(err)
 		}
+		if step[1] == "M" {
+			at = 0
+		}
+		at += v
+		top, bottom, points = math.Min(top, at), math.Max(bottom, at), points+1
+	}
+	if points > 4*601 || points < 600 {
+		t.Errorf("%d points for 600 columns", points)
+	}
+	if math.Abs(top-y.at(5)) > 0.06 || math.Abs(bottom-y.at(-7)) > 0.06 {
+		t.Errorf("the curve reaches from %v to %v, want its spikes at %v and %v", top, bottom, y.at(5), y.at(-7))
 	}
 	ys[500] = math.NaN()
 	ys[501] = math.Inf(1)

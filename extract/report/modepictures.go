@@ -222,7 +222,7 @@ func budgetPicture(r *result.Result) (picture, bool) {
 		}
 	}
 	return picture{ID: "picture-budget", Title: title, SVG: c.String(),
-		Caption: "Each mode’s relative error bar (of the strain, the worse of the two ends) split into its parts. Parts of size zero are not drawn."}, true
+		Caption: "Each mode’s relative error bar of the strain, split into its named parts. Parts of size zero are not drawn."}, true
 }
 
 // budgetNames lists the parts that occur, the usual ones first.

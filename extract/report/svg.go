@@ -255,7 +255,7 @@ func thinned(x, y axis, xs, ys []float64) string {
 	var b strings.Builder
 	pen := false
 	column, inside := 0, false
-	var first, low, high, last int
+	var first, low, high, last, xPen, yPen int
 	flush := func() {
 		if !inside {
 			return
@@ -267,15 +267,18 @@ func thinned(x, y axis, xs, ys []float64) string {
 				continue
 			}
 			previous = i
-			if pen {
-				b.WriteByte('L')
-			} else {
-				b.WriteByte('M')
-				pen = true
-			}
 			// Far outside the frame the clip hides the curve; keep coordinates sane.
 			py := math.Max(math.Min(y.at(ys[i]), y.from+2000), y.to-2000)
-			b.WriteString(px(x.at(xs[i])) + " " + px(py))
+			// Steps are differences of positions in whole tenths of a pixel:
+			// short to write, and their errors do not add up.
+			xTenth, yTenth := int(math.Round(10*x.at(xs[i]))), int(math.Round(10*py))
+			if pen {
+				b.WriteString("l" + px(float64(xTenth-xPen)/10) + " " + px(float64(yTenth-yPen)/10))
+			} else {
+				b.WriteString("M" + px(float64(xTenth)/10) + " " + px(float64(yTenth)/10))
+				pen = true
+			}
+			xPen, yPen = xTenth, yTenth
 		}
 		inside = false
 	}
