@@ -1,0 +1,163 @@
+// Package verify holds the built-in checks: numbers that were published, or
+// computed independently of this tool, beside what the tool finds for them
+// now. No expected value here has come from the tool.
+//
+// A check passes when the distance between the two numbers is covered by the
+// tool's own error bar plus what the source claims for its digits. The bar is
+// thus checked together with the number: an honest number with a bar that is
+// too small fails like a wrong number.
+//
+// Units are G = c = M = 1 with the particle's mass factored out.
+package verify
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"strings"
+	"time"
+
+	"nullmark/extract/result"
+)
+
+// Schema names the layout of the machine-readable outcome.
+const Schema = "nullmark.verification/1"
+
+// A Check is one published number and the way to find it with this tool.
+type Check struct {
+	Group     string  // "equation", "slicing", "source", "extraction" or "error bars"
+	Name      string  // what is compared, with its place
+	Source    Source  // where Published comes from
+	Published float64 // the number there
+	Tolerance float64 // absolute: what the source claims for it, at least half a unit of its last digit
+	Slow      bool    // runs only when asked for
+	// Ours finds the same number with its error bar.
+	Ours func(ctx context.Context, lab *Lab) (result.Q, error)
+}
+
+// A Source is where a published number stands.
+type Source struct {
+	Short string // for a column: "Martel 2004"
+	Full  string // author, journal, year, table, and whether read or from memory
+}
+
+// A Row is the outcome of one check.
+type Row struct {
+	Group     string    `json:"group"`
+	Name      string    `json:"check"`
+	Source    string    `json:"source"`
+	Citation  string    `json:"citation"`
+	Published float64   `json:"published"`
+	Tolerance float64   `json:"tolerance"` // absolute, as the source claims
+	Ours      *result.Q `json:"ours"`      // null when it could not be found
+	// Deviation is |ours - published| in units of our bar plus the source's
+	// tolerance; at most 1 passes. Absent when ours is.
+	Deviation *float64 `json:"deviation"`
+	Pass      bool     `json:"pass"`
+	Failure   string   `json:"failure,omitempty"` // why ours could not be found
+	// Seconds is the time this check took. A case that several checks need is
+	// run once, for the first of them.
+	Seconds float64 `json:"seconds"`
+}
+
+// An Outcome is a whole verification.
+type Outcome struct {
+	Schema  string  `json:"schema"`
+	Passed  bool    `json:"passed"`
+	Failed  int     `json:"failed"`
+	Seconds float64 `json:"seconds"`
+	Checks  []Row   `json:"checks"`
+}
+
+// A Runner runs the shipped circular case with some of its keys changed, each
+// change written "key.path=value".
+type Runner func(ctx context.Context, changes []string) (*result.Bundle, error)
+
+// A Lab runs cases for checks, each distinct case once.
+type Lab struct {
+	run   Runner
+	found map[string]*result.Result
+	fault map[string]error
+}
+
+// Case returns the result of the case with these changes.
+func (l *Lab) Case(ctx context.Context, changes ...string) (*result.Result, error) {
+	key := strings.Join(changes, "\n")
+	if r, ok := l.found[key]; ok {
+		return r, nil
+	}
+	if err, ok := l.fault[key]; ok {
+		return nil, err
+	}
+	b, err := l.run(ctx, changes)
+	if err == nil && (b == nil || b.Result == nil) {
+		err = fmt.Errorf("the run gave no result")
+	}
+	if err != nil {
+		if ctx.Err() == nil {
+			l.fault[key] = err
+		}
+		return nil, err
+	}
+	l.found[key] = b.Result
+	return b.Result, nil
+}
+
+// Run runs the checks in their order; the slow ones only when long is set.
+// before, where it is not nil, is told each check before it starts. The error
+// is not nil only when the context ended: a check that cannot be carried out
+// is a row that fails.
+func Run(ctx context.Context, checks []Check, run Runner, long bool, before func(i, n int, c Check)) (*Outcome, error) {
+	lab := &Lab{run: run, found: map[string]*result.Result{}, fault: map[string]error{}}
+	var chosen []Check
+	for _, c := range checks {
+		if long || !c.Slow {
+			chosen = append(chosen, c)
+		}
+	}
+	out := &Outcome{Schema: Schema, Passed: true, Checks: make([]Row, 0, len(chosen))}
+	for i, c := range chosen {
+		if before != nil {
+			before(i, len(chosen), c)
+		}
+		start := time.Now()
+		row := c.carryOut(ctx, lab)
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		row.Seconds = time.Since(start).Seconds()
+		out.Seconds += row.Seconds
+		if !row.Pass {
+			out.Failed++
+			out.Passed = false
+		}
+		out.Checks = append(out.Checks, row)
+	}
+	return out, nil
+}
+
+// carryOut finds our number and judges it.
+func (c Check) carryOut(ctx context.Context, lab *Lab) Row {
+	row := Row{Group: c.Group, Name: c.Name, Source: c.Source.Short, Citation: c.Source.Full,
+		Published: c.Published, Tolerance: c.Tolerance}
+	q, err := c.Ours(ctx, lab)
+	switch {
+	case err != nil:
+		row.Failure = err.Error()
+		return row
+	case math.IsNaN(q.Value) || math.IsInf(q.Value, 0) || !(q.Error >= 0) || math.IsInf(q.Error, 0):
+		row.Failure = fmt.Sprintf("found %v with the bar %v, which is no number with a bar", q.Value, q.Error)
+		return row
+	}
+	row.Ours = &q
+	d := math.Abs(q.Value-c.Published) / (q.Error + c.Tolerance)
+	if q.Value == c.Published {
+		d = 0
+	}
+	if math.IsInf(d, 0) {
+		d = math.MaxFloat64 // no bar on either side, and yet apart: JSON has no infinity
+	}
+	row.Deviation = &d
+	row.Pass = d <= 1
+	return row
+}
