@@ -483,12 +483,8 @@ func TestPlanShowsAndEvolvesNothing(t *testing.T) {
 func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	room(t)
 	check := verify.Check{Group: "equation", Name: "(2,2) energy", Source: verify.Source{Short: "invented", Full: "invented for this test"},
-		Published: 1e-4, Ours: func(ctx context.Context, lab *verify.Lab) (result.Q, error) {
-			r, err := lab.Case(ctx, "orbit.radius=7")
-			if err != nil {
-				return result.Q{}, err
-			}
-			return r.Find(2, 2).Infinity.Energy, nil
+		Published: 1e-4, Cases: [][]string{{"orbit.radius=7"}}, Ours: func(r []*result.Result) (result.Q, error) {
+			return r[0].Find(2, 2).Infinity.Energy, nil
 		}}
 	do := func(args ...string) outcome {
 		var stdout, stderr bytes.Buffer

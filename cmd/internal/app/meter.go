@@ -50,20 +50,22 @@ const barUnits = 10000
 func newMeter(w io.Writer, quiet bool) *meter {
 	m := &meter{w: w, quiet: quiet, now: time.Now}
 	if !quiet && isTerminal(w) {
-		m.bar = progressbar.NewOptions64(barUnits,
-			progressbar.OptionSetWriter(w),
-			progressbar.OptionSetWidth(28),
-			progressbar.OptionSetTheme(progressbar.Theme{Saucer: "━", SaucerHead: "╸", SaucerPadding: " ", BarStart: "│", BarEnd: "│"}),
-			progressbar.OptionSetPredictTime(false),
-			progressbar.OptionSetElapsedTime(false),
-			progressbar.OptionShowDescriptionAtLineEnd(),
-			progressbar.OptionEnableColorCodes(false),
-			progressbar.OptionUseANSICodes(false),
-			progressbar.OptionThrottle(100*time.Millisecond),
-			progressbar.OptionClearOnFinish(),
-		)
+		m.bar = newBar(w)
 	}
 	return m
+}
+
+// newBar is the bar of a terminal. The words behind it are the meter's.
+func newBar(w io.Writer) *progressbar.ProgressBar {
+	return progressbar.NewOptions64(barUnits,
+		progressbar.OptionSetWriter(w),
+		progressbar.OptionSetWidth(28),
+		progressbar.OptionSetTheme(progressbar.Theme{Saucer: "━", SaucerHead: "╸", SaucerPadding: " ", BarStart: "│", BarEnd: "│"}),
+		progressbar.OptionSetPredictTime(false),
+		progressbar.OptionSetElapsedTime(false),
+		progressbar.OptionShowDescriptionAtLineEnd(),
+		progressbar.OptionThrottle(100*time.Millisecond),
+	)
 }
 
 // update reports that done of total work units are done. Total may grow.
@@ -97,8 +99,10 @@ func (m *meter) update(stage string, done, total float64) {
 func (m *meter) stop() {
 	m.mu.Lock()
 	defer m.mu.Unlock()
-	if m.bar != nil && !m.done {
-		_ = m.bar.Clear()
+	if m.bar != nil && !m.done && !m.start.IsZero() {
+		// The library clears what it has drawn, but not the ^C that the
+		// terminal has put behind it.
+		fmt.Fprint(m.w, "\r\x1b[K")
 	}
 	m.done = true
 }

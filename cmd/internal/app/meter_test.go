@@ -60,6 +60,33 @@ func TestQuietAndSenselessReportsSayNothing(t *testing.T) {
 	}
 }
 
+// TestBarOfATerminal: what a terminal is sent begins its line anew each time,
+// says the same as the lines elsewhere, and is erased at the end.
+func TestBarOfATerminal(t *testing.T) {
+	var out bytes.Buffer
+	m := newMeter(&out, false)
+	m.bar = newBar(&out)
+	move := watch(m)
+	m.update("evolving", 0, 100)
+	move(20 * time.Second)
+	time.Sleep(150 * time.Millisecond) // the library draws ten times a second
+	m.update("evolving", 25, 100)
+	time.Sleep(150 * time.Millisecond)
+	m.update("evolving", 100, 100)
+	time.Sleep(150 * time.Millisecond)
+	m.update("climbing", 100, 400) // a full bar is not the end
+	m.stop()
+	got := out.String()
+	for _, want := range []string{"25%", "evolving, 20 s gone, about 60 s left", "climbing, 20 s gone"} {
+		if !strings.Contains(got, want) {
+			t.Errorf("the bar lacks %q: %q", want, got)
+		}
+	}
+	if strings.Contains(got, "\n") || !strings.HasSuffix(got, "\r\x1b[K") {
+		t.Errorf("the bar does not stay on one line, or stays behind: %q", got)
+	}
+}
+
 // TestWorkThatGrows: the total may grow when more turns out to be needed.
 func TestWorkThatGrows(t *testing.T) {
 	var out bytes.Buffer

@@ -32,28 +32,23 @@ func (c *command) verifyCommand() *cobra.Command {
 func (c *command) verify(cmd *cobra.Command) error {
 	m := newMeter(c.stderr, c.quiet)
 	defer m.stop()
-	i, n := 0, 1
-	stage := ""
-	run := func(ctx context.Context, changes []string) (*result.Bundle, error) {
+	run := func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
 		kase, err := c.shipped("circular.yaml", changes)
 		if err != nil {
 			return nil, err
 		}
-		base := float64(i)
+		stage := fmt.Sprintf("case %d of %d", i+1, n)
+		m.update(stage, float64(i), float64(n))
 		return c.engine.Run(ctx, kase, wire.Options{
 			Workers: c.workers,
 			Progress: func(p wire.Progress) {
 				if p.Total > 0 {
-					m.update(stage, base+min(p.Done/p.Total, 1), float64(n))
+					m.update(stage, float64(i)+min(p.Done/p.Total, 1), float64(n))
 				}
 			},
 		})
 	}
-	outcome, err := verify.Run(cmd.Context(), c.checks, run, c.long, func(at, of int, check verify.Check) {
-		i, n = at, of
-		stage = fmt.Sprintf("check %d of %d: %s", at+1, of, check.Group)
-		m.update(stage, float64(at), float64(of))
-	})
+	outcome, err := verify.Run(cmd.Context(), c.checks, run, c.long)
 	m.stop()
 	if err != nil {
 		return err

@@ -1,7 +1,6 @@
 package verify
 
 import (
-	"context"
 	"fmt"
 	"math"
 	"slices"
@@ -70,13 +69,9 @@ func circular(r0 float64, lMax int, relative string) []string {
 func everyMode(r0 float64) []string { return circular(r0, 8, "1e-6") }
 
 // ofMode makes the way to one number of one mode of a case.
-func ofMode(changes []string, l, m int, number func(*result.Mode) (result.Q, bool)) func(context.Context, *Lab) (result.Q, error) {
-	return func(ctx context.Context, lab *Lab) (result.Q, error) {
-		r, err := lab.Case(ctx, changes...)
-		if err != nil {
-			return result.Q{}, err
-		}
-		mode := r.Find(l, m)
+func ofMode(l, m int, number func(*result.Mode) (result.Q, bool)) func([]*result.Result) (result.Q, error) {
+	return func(r []*result.Result) (result.Q, error) {
+		mode := r[0].Find(l, m)
 		if mode == nil {
 			return result.Q{}, fmt.Errorf("the result has no mode (%d,%d)", l, m)
 		}
@@ -89,16 +84,12 @@ func ofMode(changes []string, l, m int, number func(*result.Mode) (result.Q, boo
 }
 
 // ofTotal makes the way to one number of the sums of a case.
-func ofTotal(changes []string, number func(*result.Total) (result.Q, bool)) func(context.Context, *Lab) (result.Q, error) {
-	return func(ctx context.Context, lab *Lab) (result.Q, error) {
-		r, err := lab.Case(ctx, changes...)
-		if err != nil {
-			return result.Q{}, err
-		}
-		if r.Total == nil {
+func ofTotal(number func(*result.Total) (result.Q, bool)) func([]*result.Result) (result.Q, error) {
+	return func(r []*result.Result) (result.Q, error) {
+		if r[0].Total == nil {
 			return result.Q{}, fmt.Errorf("the result has no sum over modes")
 		}
-		q, ok := number(r.Total)
+		q, ok := number(r[0].Total)
 		if !ok {
 			return result.Q{}, fmt.Errorf("the sum over modes of the result does not hold this number")
 		}
@@ -162,9 +153,9 @@ func equationChecks() []Check {
 		want := ref.mode(l, m)
 		all = append(all,
 			Check{groupEquation, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 6", l, m), frequencyDomain(),
-				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, ofMode(everyMode(6), l, m, energyInfinity)},
+				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, [][]string{everyMode(6)}, ofMode(l, m, energyInfinity)},
 			Check{groupEquation, fmt.Sprintf("(%d,%d) energy, horizon, r0 = 6", l, m), frequencyDomain(),
-				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, ofMode(everyMode(6), l, m, energyHorizon)})
+				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, [][]string{everyMode(6)}, ofMode(l, m, energyHorizon)})
 	}
 	return all
 }
@@ -179,7 +170,7 @@ func slicingChecks() []Check {
 			l, m := lm[0], lm[1]
 			s := ref.mode(l, m).Strain
 			all = append(all, Check{groupSlicing, fmt.Sprintf("(%d,%d) strain phase (rad), r0 = %v", l, m, r0), frequencyDomain(),
-				math.Atan2(s[1], s[0]), referenceDigits, false, ofMode(everyMode(r0), l, m, phase)})
+				math.Atan2(s[1], s[0]), referenceDigits, false, [][]string{everyMode(r0)}, ofMode(l, m, phase)})
 		}
 	}
 	return all
@@ -194,9 +185,9 @@ func sourceChecks() []Check {
 		want := ref.mode(l, m)
 		all = append(all,
 			Check{groupSource, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 10", l, m), frequencyDomain(),
-				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, ofMode(everyMode(10), l, m, energyInfinity)},
+				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, [][]string{everyMode(10)}, ofMode(l, m, energyInfinity)},
 			Check{groupSource, fmt.Sprintf("(%d,%d) energy, horizon, r0 = 10", l, m), frequencyDomain(),
-				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, ofMode(everyMode(10), l, m, energyHorizon)})
+				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, [][]string{everyMode(10)}, ofMode(l, m, energyHorizon)})
 	}
 	// From memory, frequency domain beside time domain.
 	changes := []string{"orbit.radius=7.9456", "waves.modes=[[2,2],[2,1],[3,3]]", "accuracy.relative=1e-6"}
@@ -209,7 +200,7 @@ func sourceChecks() []Check {
 		{3, 3, 2.5471e-5, 2.5432e-5},
 	} {
 		all = append(all, Check{groupSource, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 7.9456", c.l, c.m), martel(),
-			c.frequency, math.Abs(c.frequency - c.time), false, ofMode(changes, c.l, c.m, energyInfinity)})
+			c.frequency, math.Abs(c.frequency - c.time), false, [][]string{changes}, ofMode(c.l, c.m, energyInfinity)})
 	}
 	return all
 }
@@ -225,17 +216,17 @@ func extractionChecks() []Check {
 		omega := math.Pow(r0, -1.5)
 		all = append(all,
 			Check{groupExtraction, fmt.Sprintf("(2,2) strain amplitude, r0 = %v", r0), frequencyDomain(),
-				a, referenceDigits * a, false, ofMode(everyMode(r0), 2, 2, amplitude)},
-			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, infinity, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false,
-				ofTotal(everyMode(r0), func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Infinity) })},
-			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, horizon, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false,
-				ofTotal(everyMode(r0), func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Horizon) })},
+				a, referenceDigits * a, false, [][]string{everyMode(r0)}, ofMode(2, 2, amplitude)},
+			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, infinity, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, [][]string{everyMode(r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Infinity) })},
+			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, horizon, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, [][]string{everyMode(r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Horizon) })},
 			Check{groupExtraction, fmt.Sprintf("all l, energy, infinity, r0 = %v", r0), frequencyDomain(),
-				ref.Total.EnergyInfinity, referenceDigits * ref.Total.EnergyInfinity, false,
-				ofTotal(everyMode(r0), func(t *result.Total) (result.Q, bool) { return energy(t.Infinity) })},
+				ref.Total.EnergyInfinity, referenceDigits * ref.Total.EnergyInfinity, false, [][]string{everyMode(r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) { return energy(t.Infinity) })},
 			Check{groupExtraction, fmt.Sprintf("all l, energy, horizon, r0 = %v", r0), frequencyDomain(),
-				ref.Total.EnergyHorizon, referenceDigits * ref.Total.EnergyHorizon, false,
-				ofTotal(everyMode(r0), func(t *result.Total) (result.Q, bool) { return energy(t.Horizon) })})
+				ref.Total.EnergyHorizon, referenceDigits * ref.Total.EnergyHorizon, false, [][]string{everyMode(r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) { return energy(t.Horizon) })})
 	}
 	for _, c := range []struct {
 		r0   float64
@@ -245,13 +236,13 @@ func extractionChecks() []Check {
 		series, next := Series(v)
 		leading := quadrupole(v)
 		all = append(all,
-			Check{groupExtraction, fmt.Sprintf("flux/quadrupole, infinity, r0 = %v", c.r0), postNewtonian(), series, next, c.slow,
-				ofTotal(farOut(c.r0), func(t *result.Total) (result.Q, bool) {
+			Check{groupExtraction, fmt.Sprintf("flux/quadrupole, infinity, r0 = %v", c.r0), postNewtonian(), series, next, c.slow, [][]string{farOut(c.r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) {
 					q, ok := energy(t.Infinity)
 					return scaled(q, leading), ok
 				})},
-			Check{groupExtraction, fmt.Sprintf("horizon flux/(quadrupole v^8), r0 = %v", c.r0), absorption(), 1, 10 * v * v, c.slow,
-				ofTotal(farOut(c.r0), func(t *result.Total) (result.Q, bool) {
+			Check{groupExtraction, fmt.Sprintf("horizon flux/(quadrupole v^8), r0 = %v", c.r0), absorption(), 1, 10 * v * v, c.slow, [][]string{farOut(c.r0)},
+				ofTotal(func(t *result.Total) (result.Q, bool) {
 					q, ok := energy(t.Horizon)
 					return scaled(q, leading*math.Pow(v, 8)), ok
 				})})
@@ -273,7 +264,7 @@ func barChecks() []Check {
 	}{{"1e-6", false}, {"1e-9", true}} {
 		all = append(all,
 			Check{groupBars, "share of bars that hold the truth, asked " + asked.relative, promise(), 1, 0.03, asked.slow,
-				overBars(asked.relative, func(b []barAndError) float64 {
+				bothRadii(asked.relative), overBars(func(b []barAndError) float64 {
 					inside := 0
 					for _, x := range b {
 						if x.err <= x.bar {
@@ -284,7 +275,7 @@ func barChecks() []Check {
 				})},
 			// Between 1 and 10 is between 0 and 1 in powers of ten.
 			Check{groupBars, "log10(median bar/true error), asked " + asked.relative, promise(), 0.5, 0.5, asked.slow,
-				overBars(asked.relative, func(b []barAndError) float64 {
+				bothRadii(asked.relative), overBars(func(b []barAndError) float64 {
 					ratio := make([]float64, len(b))
 					for i, x := range b {
 						ratio[i] = x.bar / x.err
@@ -300,16 +291,17 @@ func barChecks() []Check {
 // known to the digits of the table.
 type barAndError struct{ bar, err float64 }
 
-// overBars makes the way to a statistic of all bars of the two shared cases.
-func overBars(relative string, statistic func([]barAndError) float64) func(context.Context, *Lab) (result.Q, error) {
-	return func(ctx context.Context, lab *Lab) (result.Q, error) {
+// bothRadii are the cases of every orbit in the independent table.
+func bothRadii(relative string) [][]string {
+	return [][]string{circular(6, 8, relative), circular(10, 8, relative)}
+}
+
+// overBars makes the way to a statistic of all bars of these two cases.
+func overBars(statistic func([]barAndError) float64) func([]*result.Result) (result.Q, error) {
+	return func(r []*result.Result) (result.Q, error) {
 		var all []barAndError
-		for _, r0 := range []float64{6, 10} {
-			r, err := lab.Case(ctx, circular(r0, 8, relative)...)
-			if err != nil {
-				return result.Q{}, err
-			}
-			pairs, err := compareAll(r, referenceOrbit(r0))
+		for i, r0 := range []float64{6, 10} {
+			pairs, err := compareAll(r[i], referenceOrbit(r0))
 			if err != nil {
 				return result.Q{}, err
 			}

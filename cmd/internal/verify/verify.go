@@ -31,8 +31,12 @@ type Check struct {
 	Published float64 // the number there
 	Tolerance float64 // absolute: what the source claims for it, at least half a unit of its last digit
 	Slow      bool    // runs only when asked for
-	// Ours finds the same number with its error bar.
-	Ours func(ctx context.Context, lab *Lab) (result.Q, error)
+	// Cases are what has to be run for it, each the shipped circular case with
+	// some keys changed, written "key.path=value".
+	Cases [][]string
+	// Ours finds the same number with its error bar in the results of Cases,
+	// which come in the same order and are not to be modified.
+	Ours func(r []*result.Result) (result.Q, error)
 }
 
 // A Source is where a published number stands.
@@ -69,59 +73,29 @@ type Outcome struct {
 	Checks  []Row   `json:"checks"`
 }
 
-// A Runner runs the shipped circular case with some of its keys changed, each
-// change written "key.path=value".
-type Runner func(ctx context.Context, changes []string) (*result.Bundle, error)
+// A Runner runs the shipped circular case with these changes. It is the i-th of
+// n cases, counted from 0.
+type Runner func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error)
 
-// A Lab runs cases for checks, each distinct case once.
-type Lab struct {
-	run   Runner
-	found map[string]*result.Result
-	fault map[string]error
-}
-
-// Case returns the result of the case with these changes.
-func (l *Lab) Case(ctx context.Context, changes ...string) (*result.Result, error) {
-	key := strings.Join(changes, "\n")
-	if r, ok := l.found[key]; ok {
-		return r, nil
-	}
-	if err, ok := l.fault[key]; ok {
-		return nil, err
-	}
-	b, err := l.run(ctx, changes)
-	if err == nil && (b == nil || b.Result == nil) {
-		err = fmt.Errorf("the run gave no result")
-	}
-	if err != nil {
-		if ctx.Err() == nil {
-			l.fault[key] = err
-		}
-		return nil, err
-	}
-	l.found[key] = b.Result
-	return b.Result, nil
-}
-
-// Run runs the checks in their order; the slow ones only when long is set.
-// before, where it is not nil, is told each check before it starts. The error
-// is not nil only when the context ended: a check that cannot be carried out
-// is a row that fails.
-func Run(ctx context.Context, checks []Check, run Runner, long bool, before func(i, n int, c Check)) (*Outcome, error) {
-	lab := &Lab{run: run, found: map[string]*result.Result{}, fault: map[string]error{}}
+// Run runs the checks in their order, the slow ones only when long is set, and
+// each distinct case once. The error is not nil only when the context ended: a
+// check that cannot be carried out is a row that fails.
+func Run(ctx context.Context, checks []Check, run Runner, long bool) (*Outcome, error) {
 	var chosen []Check
+	lab := lab{run: run, cases: map[string]*caseRun{}}
 	for _, c := range checks {
-		if long || !c.Slow {
-			chosen = append(chosen, c)
+		if c.Slow && !long {
+			continue
+		}
+		chosen = append(chosen, c)
+		for _, changes := range c.Cases {
+			lab.cases[key(changes)] = &caseRun{}
 		}
 	}
 	out := &Outcome{Schema: Schema, Passed: true, Checks: make([]Row, 0, len(chosen))}
-	for i, c := range chosen {
-		if before != nil {
-			before(i, len(chosen), c)
-		}
+	for _, c := range chosen {
 		start := time.Now()
-		row := c.carryOut(ctx, lab)
+		row := c.carryOut(ctx, &lab)
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
@@ -136,11 +110,54 @@ func Run(ctx context.Context, checks []Check, run Runner, long bool, before func
 	return out, nil
 }
 
+// lab runs each distinct case once.
+type lab struct {
+	run   Runner
+	cases map[string]*caseRun
+	done  int
+}
+
+type caseRun struct {
+	done   bool
+	result *result.Result
+	err    error
+}
+
+func key(changes []string) string { return strings.Join(changes, "\n") }
+
+func (l *lab) result(ctx context.Context, changes []string) (*result.Result, error) {
+	c := l.cases[key(changes)]
+	if c.done {
+		return c.result, c.err
+	}
+	b, err := l.run(ctx, changes, l.done, len(l.cases))
+	l.done++
+	c.done = true
+	switch {
+	case err != nil:
+		c.err = err
+	case b == nil || b.Result == nil:
+		c.err = fmt.Errorf("the run gave no result")
+	default:
+		c.result = b.Result
+	}
+	return c.result, c.err
+}
+
 // carryOut finds our number and judges it.
-func (c Check) carryOut(ctx context.Context, lab *Lab) Row {
+func (c Check) carryOut(ctx context.Context, lab *lab) Row {
 	row := Row{Group: c.Group, Name: c.Name, Source: c.Source.Short, Citation: c.Source.Full,
 		Published: c.Published, Tolerance: c.Tolerance}
-	q, err := c.Ours(ctx, lab)
+	var results []*result.Result
+	for _, changes := range c.Cases {
+		r, err := lab.result(ctx, changes)
+		if err != nil {
+			row.Failure = err.Error()
+			return row
+		}
+		results = append(results, r)
+	}
+	q, err := c.Ours(results)
 	switch {
 	case err != nil:
 		row.Failure = err.Error()

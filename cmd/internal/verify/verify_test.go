@@ -17,7 +17,7 @@ import (
 // given is a runner that answers with the independent table itself, its
 // numbers carrying a relative bar and moved by a part of it.
 func given(bar, moved float64) Runner {
-	return func(_ context.Context, changes []string) (*result.Bundle, error) {
+	return func(_ context.Context, changes []string, _, _ int) (*result.Bundle, error) {
 		r := &result.Result{}
 		for _, r0 := range []float64{6, 10} {
 			if !slices.Contains(changes, circular(r0, 8, "x")[0]) {
@@ -56,7 +56,7 @@ func TestPassAndFail(t *testing.T) {
 	if len(checks) < 30 {
 		t.Fatalf("only %d checks", len(checks))
 	}
-	out, err := Run(context.Background(), checks, given(1e-6, 0.3), false, nil)
+	out, err := Run(context.Background(), checks, given(1e-6, 0.3), false)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -70,7 +70,7 @@ func TestPassAndFail(t *testing.T) {
 	for i := range checks {
 		changed := slices.Clone(checks)
 		changed[i].Published += 3e-6*math.Abs(changed[i].Published) + 4*changed[i].Tolerance
-		out, err := Run(context.Background(), changed, given(1e-6, 0.3), false, nil)
+		out, err := Run(context.Background(), changed, given(1e-6, 0.3), false)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -80,7 +80,7 @@ func TestPassAndFail(t *testing.T) {
 	}
 
 	// Numbers that lie outside their bars.
-	out, err = Run(context.Background(), checks, given(1e-6, 2), false, nil)
+	out, err = Run(context.Background(), checks, given(1e-6, 2), false)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -93,7 +93,7 @@ func TestPassAndFail(t *testing.T) {
 	}
 
 	// Bars that hold the truth but are padded fail the check of their width.
-	out, err = Run(context.Background(), checks, given(1e-6, 0.01), false, nil)
+	out, err = Run(context.Background(), checks, given(1e-6, 0.01), false)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -105,14 +105,21 @@ func TestPassAndFail(t *testing.T) {
 }
 
 func TestACaseIsRunOnce(t *testing.T) {
-	times := map[string]int{}
+	times, of := map[string]int{}, 0
 	inner := given(1e-6, 0.3)
-	_, err := Run(context.Background(), Checks(), func(ctx context.Context, changes []string) (*result.Bundle, error) {
+	_, err := Run(context.Background(), Checks(), func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
+		if i != len(times) {
+			t.Errorf("case %d is called number %d", len(times), i)
+		}
+		of = n
 		times[strings.Join(changes, " ")]++
-		return inner(ctx, changes)
-	}, true, nil)
+		return inner(ctx, changes, i, n)
+	}, true)
 	if err != nil {
 		t.Fatal(err)
+	}
+	if of != len(times) {
+		t.Errorf("%d cases ran, %d were announced", len(times), of)
 	}
 	for c, n := range times {
 		if n != 1 {
@@ -124,8 +131,8 @@ func TestACaseIsRunOnce(t *testing.T) {
 func TestWhatCannotBeFoundFails(t *testing.T) {
 	src := Source{"s", "S"}
 	check := func(q result.Q, err error) Row {
-		out, e := Run(context.Background(), []Check{{"g", "n", src, 1, 0, false,
-			func(context.Context, *Lab) (result.Q, error) { return q, err }}}, nil, false, nil)
+		out, e := Run(context.Background(), []Check{{"g", "n", src, 1, 0, false, nil,
+			func([]*result.Result) (result.Q, error) { return q, err }}}, nil, false)
 		if e != nil {
 			t.Fatal(e)
 		}
@@ -156,10 +163,10 @@ func TestWhatCannotBeFoundFails(t *testing.T) {
 
 func TestAnEndedContextEndsTheChecks(t *testing.T) {
 	ctx, cancel := context.WithCancel(context.Background())
-	_, err := Run(ctx, only(Checks()), func(context.Context, []string) (*result.Bundle, error) {
+	_, err := Run(ctx, only(Checks()), func(context.Context, []string, int, int) (*result.Bundle, error) {
 		cancel()
 		return nil, ctx.Err()
-	}, false, nil)
+	}, false)
 	if !errors.Is(err, context.Canceled) {
 		t.Errorf("got %v", err)
 	}
@@ -204,8 +211,8 @@ func TestSeriesCoefficients(t *testing.T) {
 func TestTableShowsEverything(t *testing.T) {
 	checks := only(Checks())
 	checks[3].Published *= 2
-	checks[5].Ours = func(context.Context, *Lab) (result.Q, error) { return result.Q{}, errors.New("no such number") }
-	out, err := Run(context.Background(), checks, given(1e-6, 0.3), false, nil)
+	checks[5].Ours = func([]*result.Result) (result.Q, error) { return result.Q{}, errors.New("no such number") }
+	out, err := Run(context.Background(), checks, given(1e-6, 0.3), false)
 	if err != nil {
 		t.Fatal(err)
 	}
