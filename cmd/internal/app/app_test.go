@@ -505,6 +505,18 @@ func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	}
 }
 
+// TestVerifysCasesAreGoodInput reads every case that the built-in checks need.
+func TestVerifysCasesAreGoodInput(t *testing.T) {
+	c := &command{engine: fake(nil)}
+	for _, check := range verify.Checks() {
+		for _, changes := range check.Cases {
+			if _, err := c.shipped("circular.yaml", changes); err != nil {
+				t.Errorf("%s, %s: %v", check.Group, check.Name, err)
+			}
+		}
+	}
+}
+
 // TestNothingIsWrittenHalf: results that cannot be shown are an error.
 func TestNothingIsWrittenHalf(t *testing.T) {
 	room(t)
