@@ -14,8 +14,6 @@ import (
 	"nullmark/extract/result"
 	"nullmark/extract/strain"
 	"nullmark/hyperboloidal"
-
-	"go.yaml.in/yaml/v3"
 )
 
 const (
@@ -25,7 +23,7 @@ const (
 
 // assemble turns finished ladders into the data of a result.
 func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
-	tree, err := caseTree(c)
+	tree, err := c.Tree()
 	if err != nil {
 		return nil, err
 	}
@@ -56,19 +54,6 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	r.totals(c, res)
 	r.verdict(c, res)
 	return &result.Bundle{Result: res, Series: r.series(c)}, nil
-}
-
-// caseTree is the resolved case as plain maps and lists.
-func caseTree(c *configs.Case) (any, error) {
-	text, err := c.YAML()
-	if err != nil {
-		return nil, err
-	}
-	var tree any
-	if err := yaml.Unmarshal(text, &tree); err != nil {
-		return nil, err
-	}
-	return tree, nil
 }
 
 func (r *circularRun) describe() *result.Orbit {
