@@ -72,7 +72,7 @@ func (r *circularRun) entry(m *ladder, rung int) result.Mode {
 	t := m.mode.tone
 	inf, hor := m.bars[certify.Infinity], m.bars[certify.Horizon]
 	out := result.Mode{
-		L: t.L, M: t.M, Parity: parityName(m.mode.parity), Measure: rate, Counts: bothSigns,
+		L: t.L, M: t.M, Parity: m.mode.parity.String(), Measure: rate, Counts: bothSigns,
 		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Infinity]), inf.Bar()),
 		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Horizon]), hor.Bar()),
 		Met:      m.met, Why: m.why, Rung: rung,

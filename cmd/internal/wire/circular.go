@@ -9,7 +9,6 @@ import (
 	"strings"
 
 	"nullmark/configs"
-	"nullmark/equations"
 	"nullmark/extract/certify"
 	"nullmark/extract/result"
 	"nullmark/hyperboloidal"
@@ -283,6 +282,7 @@ func (r *circularRun) round(ctx context.Context, round int, pending []*ladder) e
 				until = math.Max(until, m.until)
 			}
 		}
+		expected := until
 		var more func([]certify.Samples, float64) float64
 		if round == 0 && r.n.until == 0 {
 			more = r.more(b, r.n.grid(k).N)
@@ -299,6 +299,7 @@ func (r *circularRun) round(ctx context.Context, round int, pending []*ladder) e
 		}
 		if round == 0 {
 			for j := k - 1; j > k-r.n.rungs; j-- {
+				r.expect(j, fine.Until-expected)
 				coarse, err := r.block(ctx, fmt.Sprintf("%s-rung-%d", name, j), b, j, fine.Until, nil)
 				if err != nil {
 					return err
@@ -369,8 +370,16 @@ func (r *circularRun) block(ctx context.Context, key string, modes []*ladder, k 
 	for _, m := range modes {
 		list = append(list, m.mode)
 	}
+	longer := more
+	if more != nil {
+		longer = func(s []certify.Samples, until float64) float64 {
+			next := more(s, until)
+			r.expect(k, next-until)
+			return next
+		}
+	}
 	b, err := kept(r.o.Keep, key, func() (*blockRun, error) {
-		return r.n.evolveBlock(ctx, list, r.orbit.rstar, k, until, more, r.meter.did)
+		return r.n.evolveBlock(ctx, list, r.orbit.rstar, k, until, longer, r.meter.did)
 	})
 	if err == nil {
 		r.log(k, modes, b)
@@ -408,5 +417,3 @@ func chunk(n int) [][2]int {
 	}
 	return out
 }
-
-func parityName(p equations.Parity) string { return p.String() }
