@@ -161,9 +161,12 @@ func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
-			// A mode below the floor is held to the floor: the same fraction
-			// of the asked accuracy on the scale asked/floor.
-			scale := math.Max(f.Energy.Value, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			scale := f.Energy.Value
+			if scale < c.Accuracy.Floor*largest[e] {
+				// Below the floor the bar is held to floor times the largest,
+				// which is the asked accuracy on this scale.
+				scale = math.Max(scale, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			}
 			if rel := f.Energy.Error / scale; rel > a.Worst.Relative {
 				a.Worst = result.Worst{L: m.L, M: m.M, What: "energy at " + certify.End(e).String(), Relative: rel}
 			}

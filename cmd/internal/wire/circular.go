@@ -154,7 +154,10 @@ func (r *circularRun) scouting(ctx context.Context) error {
 	}
 	for _, m := range r.modes {
 		for e := range m.allow {
-			m.allow[e] = math.Max(r.asked, r.floor*largest[e]/m.size(e))
+			m.allow[e] = r.asked
+			if size := m.size(e); size < r.floor*largest[e] {
+				m.allow[e] = math.Max(r.asked, r.floor*largest[e]/size)
+			}
 		}
 		m.rung = r.startRung(m)
 	}
@@ -179,7 +182,7 @@ func (r *circularRun) startRung(m *ladder) int {
 		ok := true
 		for e := range m.allow {
 			// Below 2e-12 round-off rules whatever the grid.
-			ok = ok && certify.Predict(certify.End(e), m.mode.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 2e-12)/2
+			ok = ok && certify.Predict(certify.End(e), m.mode.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 4e-12)/2
 		}
 		if ok {
 			break
@@ -338,7 +341,7 @@ func (r *circularRun) certify(m *ladder) error {
 			z = append(z, rd.Z)
 		}
 		bar := certify.Budget{
-			Discretisation: certify.Discretisation(z),
+			Discretisation: certify.Discretisation(z, min(r.n.order, r.n.moments)),
 			Transient:      fine.Transient(end, m.mode.tone, m.until),
 			RoundOff:       certify.RoundOff(m.points[m.rung], m.mode.tone.Omega),
 		}
