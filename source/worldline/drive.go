@@ -171,9 +171,10 @@ func rational(x, y, w []float64, at float64) float64 {
 
 // Ratio implements Flux.
 func (f *FluxTable) Ratio(x float64) float64 {
-	at := -saturate(-saturate(x, f.last, f.width), -f.first, f.width)
-	// the ends themselves are reached only up to round-off
-	at = min(max(at, f.first), f.last)
+	at := min(saturate(x, f.last, f.width), f.last)
+	// outside the outermost row the torque matters only deep in the plunge,
+	// where it is next to nothing: the ratio is held a little beyond that row
+	at = -saturate(-at, -0.97*f.first, 0.003*f.first)
 	return rational(f.x, f.ratio, f.weight, at) * PostNewtonian{}.Ratio(x)
 }
 
