@@ -59,6 +59,10 @@ func (p *pair) measure() {
 	if p.m == 0 { // real up to a constant phase: one signed difference against the peak
 		turn := p.plane()
 		for i := range p.u {
+			if p.scale == 0 {
+				c.Amp[i] = nan
+				continue
+			}
 			c.Amp[i] = real((p.model[i]-p.ref[i])*turn) / p.scale
 			c.AmpBar[i] = p.bar(i) / p.scale
 		}
