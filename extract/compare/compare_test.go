@@ -108,7 +108,7 @@ func TestSmallDriftAndAmplitude(t *testing.T) {
 		if math.Abs(slope.Value-1e-6) > slope.Error || math.Abs(amp.Value-1e-5) > amp.Error {
 			t.Errorf("(%d,%d): the bars do not cover: %v %v", m.L, m.M, slope, amp)
 		}
-		if !strings.Contains(m.Sentence, "drifts by +1.00e-06") || !strings.Contains(m.Sentence, "too large by 1.00e-05") {
+		if !strings.Contains(m.Sentence, "drifts by +1.00e-6") || !strings.Contains(m.Sentence, "too large by 1.00e-5") {
 			t.Errorf("sentence: %s", m.Sentence)
 		}
 	}

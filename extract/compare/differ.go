@@ -184,23 +184,24 @@ func condense(u, y, b []float64, marks []marker, stages []stage) *result.Differe
 	return d
 }
 
-// largest returns the largest |y| among the samples that exceed their bar, or
-// among all where none does.
+// largest returns the sample whose |y| - b is largest, the largest difference
+// that is certain, or the largest |y| where no sample exceeds its bar.
 func largest(y, b []float64) (result.Q, bool) {
-	best, out := -1, -1
+	best, sure := -1, -1
 	for i := range y {
 		if math.IsNaN(y[i]) {
 			continue
 		}
-		if best < 0 || math.Abs(y[i]) > math.Abs(y[best]) {
+		a := math.Abs(y[i])
+		if best < 0 || a > math.Abs(y[best]) {
 			best = i
 		}
-		if math.Abs(y[i]) > b[i] && (out < 0 || math.Abs(y[i]) > math.Abs(y[out])) {
-			out = i
+		if a > b[i] && (sure < 0 || a-b[i] > math.Abs(y[sure])-b[sure]) {
+			sure = i
 		}
 	}
-	if out >= 0 {
-		best = out
+	if sure >= 0 {
+		best = sure
 	}
 	if best < 0 {
 		return result.Q{}, false

@@ -160,7 +160,7 @@ func TestBalanceAtBothEnds(t *testing.T) {
 		f.EnergyRate[i] *= 1 + 1e-6
 	}
 	c = mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f})
-	if c.Balance.Verdict != result.Differs || !strings.Contains(c.Balance.Sentence, "+1.00e-04") {
+	if c.Balance.Verdict != result.Differs || !strings.Contains(c.Balance.Sentence, "+1.00e-4") {
 		t.Error(c.Balance.Sentence)
 	}
 }

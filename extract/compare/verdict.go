@@ -68,6 +68,9 @@ func (p *pair) bars() []float64 {
 
 // referencePeak is the certified peak of the mode, or one found in its series.
 func (w *waves) referencePeak(p *pair) (result.Peak, bool) {
+	if p.m == 0 { // no phase, hence no frequency
+		return result.Peak{}, false
+	}
 	if m := w.in.Reference.Result.Find(p.l, p.m); m != nil && m.Peak != nil {
 		return *m.Peak, m.Peak.U.Value > p.u[0] && m.Peak.U.Value < p.u[len(p.u)-1]
 	}
@@ -134,7 +137,7 @@ func inside(mc *result.ModeComparison) string {
 	return ", which is larger than the signal"
 }
 
-func short2(x float64) string { return fmt.Sprintf("%.2g", x) }
+func short2(x float64) string { return tidy(fmt.Sprintf("%.2g", x)) }
 
 // settle is the accuracy, rounded down to one digit, that brings a relative
 // bar from now to want: bars scale with what was asked.

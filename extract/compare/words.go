@@ -20,7 +20,7 @@ func list(s []string) string {
 	return strings.Join(s, ", ")
 }
 
-func short(x float64) string { return strconv.FormatFloat(x, 'g', 6, 64) }
+func short(x float64) string { return tidy(strconv.FormatFloat(x, 'g', 6, 64)) }
 
 // number writes a value to three digits, and a sign in front.
 func signed(x float64) string {
@@ -33,13 +33,26 @@ func signed(x float64) string {
 
 func plain(x float64) string {
 	if a := math.Abs(x); a != 0 && (a < 1e-3 || a >= 1e5) {
-		return strconv.FormatFloat(x, 'e', 2, 64)
+		return tidy(strconv.FormatFloat(x, 'e', 2, 64))
 	}
 	return strconv.FormatFloat(x, 'g', 4, 64)
 }
 
+// tidy turns 1e-06 into 1e-6 and 1e+12 into 1e12.
+func tidy(s string) string {
+	mantissa, power, ok := strings.Cut(s, "e")
+	if !ok {
+		return s
+	}
+	e, err := strconv.Atoi(power)
+	if err != nil {
+		return s
+	}
+	return mantissa + "e" + strconv.Itoa(e)
+}
+
 // barText writes a bar to two digits.
-func barText(x float64) string { return strconv.FormatFloat(x, 'g', 2, 64) }
+func barText(x float64) string { return tidy(strconv.FormatFloat(x, 'g', 2, 64)) }
 
 func withBar(q result.Q) string { return signed(q.Value) + " ± " + barText(q.Error) }
 
