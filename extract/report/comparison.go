@@ -359,3 +359,60 @@ func settingsList(c *result.Comparison) [][2]string {
 	}
 	return out
 }
+
+// ComparisonText writes what a terminal shows of a comparison: the sentence,
+// the hints, a line a mode that does not agree, flux, balance, warnings.
+func ComparisonText(w io.Writer, c *result.Comparison) error {
+	var b strings.Builder
+	line := func(s string) {
+		if s != "" {
+			b.WriteString(clean(s) + "\n")
+		}
+	}
+	line(c.Overall.Sentence)
+	if c.Overall.Mismatch != nil {
+		s := "Mismatch of the sum, the larger of face-on and edge-on: " + plusMinus(*c.Overall.Mismatch, scientific)
+		if q := c.Overall.SNRVisible; q != nil {
+			s += "; it could be noticed from a signal-to-noise ratio of "
+			if c.Overall.SNRIs != "" {
+				s += c.Overall.SNRIs + " "
+			}
+			s += settingNumber(q.Value)
+		}
+		line(s + ".")
+	}
+	for _, h := range c.Hints {
+		line("Another convention? " + h + " Nothing of the kind was applied.")
+	}
+	if s := c.Shift; s != nil {
+		line(fmt.Sprintf("Shifted before comparing: time %s M, orbital phase %s rad.", plusMinus(s.Time, readable), plusMinus(s.Phase, readable)))
+	}
+	if len(c.Modes) > 1 {
+		for _, m := range c.Modes {
+			if m.Verdict != result.Inside {
+				line("  " + m.Sentence)
+			}
+		}
+	}
+	if c.Flux != nil {
+		line(c.Flux.Sentence)
+	}
+	if c.Balance != nil {
+		line(c.Balance.Sentence)
+	}
+	apart := 0
+	for _, n := range c.Numbers {
+		if n.Verdict == result.Differs {
+			apart++
+			line(fmt.Sprintf("  %s differs: by %s", n.Name, plusMinus(n.Difference, scientific)))
+		}
+	}
+	if n := len(c.Numbers); n > 0 {
+		line(fmt.Sprintf("%d of %s differ.", apart, count(n, "certified number")))
+	}
+	for _, s := range c.Warnings {
+		line("Warning: " + s)
+	}
+	_, err := io.WriteString(w, b.String())
+	return err
+}
