@@ -52,7 +52,8 @@ func (w *waves) align(common [][2]int) error {
 			// Whole turns first: phases are known up to 2 pi, so that the
 			// orbital phase of one mode has m possible values.
 			w.shift[1] = n.start()
-			flat = n.flat()
+			t, _ := n.bars(false)
+			flat = n.flat() || t*n.fastest() > 0.1
 			if flat {
 				w.c.Warnings = append(w.c.Warnings, "In the window of align the frequency hardly changes, so that a time shift cannot be told from a phase shift: only the phase was shifted.")
 			}
@@ -146,6 +147,16 @@ func (n *normal) add(p *pair, a, b int) {
 // flat reports whether omega/m is the same everywhere to 1e-5.
 func (n *normal) flat() bool {
 	return n.aa*n.bb == 0 || n.aa*n.bb-n.ab*n.ab < 1e-10*n.aa*n.bb
+}
+
+// fastest is the largest frequency in the window. A time shift whose bar is
+// more than a tenth of a radian at that frequency is not known.
+func (n *normal) fastest() float64 {
+	top := 0.0
+	for _, om := range n.om {
+		top = math.Max(top, math.Abs(om))
+	}
+	return top
 }
 
 func (n *normal) solve(flat bool) (dT, dPsi float64) {

@@ -12,6 +12,7 @@ package compare
 import (
 	"fmt"
 	"math"
+	"path/filepath"
 
 	"nullmark/extract/result"
 )
@@ -53,7 +54,7 @@ func Compare(in Input) (*result.Comparison, *result.Curves, error) {
 	c.Settings = result.Settings{Quantity: conv.Quantity, Phase: conv.Phase, PhaseOf: conv.PhaseOf, TimeIs: conv.TimeIs, Per: conv.Per,
 		Align: "none", Noise: "flat", Parameters: in.Parameters}
 	if in.Noise != nil && len(in.Noise.Frequency) > 0 {
-		c.Settings.Noise, c.Settings.TotalMass = in.Noise.File, in.Noise.TotalMass
+		c.Settings.Noise, c.Settings.TotalMass = filepath.Base(in.Noise.File), in.Noise.TotalMass
 	}
 	if in.Align != nil {
 		c.Settings.Align = fmt.Sprintf("one time and one phase shift over u = %.6g … %.6g", in.Align[0], in.Align[1])

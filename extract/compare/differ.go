@@ -124,48 +124,57 @@ type stage struct {
 	from, to int
 }
 
-// condense makes a Difference of the curve y with bars b.
+// weights are those of mean and slope: 1/max(b, f)^2, zero in gaps, where f is
+// a hundredth of the largest certain difference (at least the smallest bar). So all
+// samples count alike as long as their bars are small beside what is seen, and
+// samples that the reference hardly knows count little.
+func weights(y, b []float64, largest result.Q) []float64 {
+	f := math.Inf(1)
+	for i := range y {
+		if !math.IsNaN(y[i]) {
+			f = math.Min(f, b[i])
+		}
+	}
+	f = math.Max(f, 0.01*(math.Abs(largest.Value)-largest.Error))
+	w := make([]float64, len(y))
+	for i := range y {
+		switch {
+		case math.IsNaN(y[i]):
+		case b[i] <= f:
+			w[i] = 1
+		default:
+			w[i] = (f / b[i]) * (f / b[i])
+		}
+	}
+	return w
+}
+
+// condense makes a Difference of the curve y with bars b. The bars of mean and
+// slope are the bounds for errors that conspire.
 func condense(u, y, b []float64, marks []marker, stages []stage) *result.Difference {
 	d := &result.Difference{ByStage: map[string]result.Q{}, At: []result.MarkedQ{}}
 	var ok bool
 	if d.Max, ok = largest(y, b); !ok {
 		return nil
 	}
-	// Mean and slope, weighted with 1/bar^2; the bars of these linear
-	// functionals are the bounds for errors that conspire.
-	floor := math.Inf(1)
-	for i := range y {
-		if !math.IsNaN(y[i]) && b[i] > 0 {
-			floor = math.Min(floor, b[i])
-		}
-	}
-	if math.IsInf(floor, 1) {
-		floor = 1
-	}
-	weight := func(i int) float64 {
-		if math.IsNaN(y[i]) {
-			return 0
-		}
-		w := floor / math.Max(b[i], floor)
-		return w * w
-	}
+	w := weights(y, b, d.Max)
 	var s0, s1 float64
 	for i := range y {
-		w := weight(i)
-		s0 += w
-		s1 += w * (u[i] - u[0])
+		s0 += w[i]
+		s1 += w[i] * (u[i] - u[0])
 	}
 	mid := u[0] + s1/s0
 	var s2, mean, meanBar, slope, slopeBar float64
 	for i := range y {
-		if w := weight(i); w > 0 {
-			t := u[i] - mid
-			s2 += w * t * t
-			mean += w * y[i]
-			meanBar += w * b[i]
-			slope += w * t * y[i]
-			slopeBar += w * math.Abs(t) * b[i]
+		if w[i] == 0 {
+			continue
 		}
+		t := u[i] - mid
+		s2 += w[i] * t * t
+		mean += w[i] * y[i]
+		meanBar += w[i] * b[i]
+		slope += w[i] * t * y[i]
+		slopeBar += w[i] * math.Abs(t) * b[i]
 	}
 	d.Mean = result.Q{Value: mean / s0, Error: meanBar / s0}
 	if s2 > 0 {

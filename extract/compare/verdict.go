@@ -209,25 +209,21 @@ const (
 
 // shape tells whether a curve is a constant, or a straight line.
 func shape(u, y, b []float64, d *result.Difference) form {
-	n, sy, so, sl := 0, 0.0, 0.0, 0.0
-	mid, weight := 0.0, 0.0
+	w := weights(y, b, d.Max)
+	n, sy, so, sl, mid, all := 0, 0.0, 0.0, 0.0, 0.0, 0.0
 	for i := range y {
-		if !math.IsNaN(y[i]) {
-			wt := 1 / (b[i]*b[i] + 1e-300)
-			mid += wt * u[i]
-			weight += wt
-		}
+		mid += w[i] * u[i]
+		all += w[i]
 	}
-	mid /= weight
+	mid /= all
 	for i := range y {
-		if math.IsNaN(y[i]) {
+		if w[i] == 0 {
 			continue
 		}
 		n++
-		wt := 1 / (b[i]*b[i] + 1e-300)
 		o := y[i] - d.Mean.Value
 		l := o - d.Slope.Value*(u[i]-mid)
-		sy, so, sl = sy+wt*y[i]*y[i], so+wt*o*o, sl+wt*l*l
+		sy, so, sl = sy+w[i]*y[i]*y[i], so+w[i]*o*o, sl+w[i]*l*l
 	}
 	switch {
 	case n < 3 || sy == 0:

@@ -260,7 +260,7 @@ func viewTables(c *result.Comparison) ([]table, string) {
 		case s == nil:
 			r.Cells = append(r.Cells, cell{"none", "num value"}, cell{missing, "num bar"})
 		case is != "":
-			r.Cells = append(r.Cells, cell{is + " " + settingNumber(s.Value), "num value"}, cell{missing, "num bar"})
+			r.Cells = append(r.Cells, cell{is + " " + tidyExponent(fmt.Sprintf("%.3g", s.Value)), "num value"}, cell{missing, "num bar"})
 		default:
 			r.Cells = value(r.Cells, s, readable)
 		}
@@ -377,7 +377,7 @@ func ComparisonText(w io.Writer, c *result.Comparison) error {
 			if c.Overall.SNRIs != "" {
 				s += c.Overall.SNRIs + " "
 			}
-			s += settingNumber(q.Value)
+			s += tidyExponent(fmt.Sprintf("%.3g", q.Value))
 		}
 		line(s + ".")
 	}

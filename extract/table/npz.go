@@ -4,6 +4,7 @@ import (
 	"archive/zip"
 	"fmt"
 	"io"
+	"path/filepath"
 	"strings"
 )
 
@@ -28,7 +29,7 @@ func (t *Table) openZip(r io.ReaderAt, size int64) error {
 	for _, f := range z.File {
 		name, ok := strings.CutSuffix(f.Name, ".npy")
 		if !ok {
-			t.notes = append(t.notes, fmt.Sprintf("%s: the member %q is no array and was passed over", t.file, f.Name))
+			t.notes = append(t.notes, fmt.Sprintf("%s: the member %q is no array and was passed over", filepath.Base(t.file), f.Name))
 			continue
 		}
 		if seen[name] {

@@ -269,7 +269,7 @@ func (t *Table) single(c Column) {
 	if !c.Single {
 		return
 	}
-	note := t.file + ": column \"" + c.Name + "\" is stored in single precision (7 digits): differences below that cannot be seen"
+	note := filepath.Base(t.file) + ": column \"" + c.Name + "\" is stored in single precision (7 digits): differences below that cannot be seen"
 	for _, n := range t.notes {
 		if n == note {
 			return
