@@ -82,6 +82,10 @@ func Compare(in Input) (*result.Comparison, *result.Curves, error) {
 			return nil, nil, err
 		}
 	}
+	t := in.Reference.Result.Total
+	if (in.Flux != nil && in.Flux.Rows == nil || in.Force != nil) && t != nil && t.Measure == "rate" && t.Truncation == nil {
+		c.Warnings = append(c.Warnings, "The reference's totals hold only the modes that were run, without an estimate of the others: a model's total flux or loss will lie above them.")
+	}
 	if in.Numbers != nil {
 		c.Numbers = numbers(in.Numbers, in.Reference.Result)
 	}

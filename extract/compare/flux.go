@@ -102,9 +102,16 @@ func (f *FluxInput) compare(ref *result.Bundle) (*result.FluxComparison, error) 
 					}
 				}
 			}
-			if len(c.X) > 0 {
-				out.Curves = append(out.Curves, c)
+			if len(c.X) == 0 {
+				continue
 			}
+			out.Curves = append(out.Curves, c)
+			own := result.FluxCurve{Of: of, L: col.L, M: col.M, Name: "model"}
+			for i := 0; i < len(f.X); i += (len(f.X) + mostShown - 1) / mostShown {
+				own.X = append(own.X, f.X[i])
+				own.Newtonian = append(own.Newtonian, result.Q{Value: y[i] / newtonian(of, f.X[i])})
+			}
+			out.Model = append(out.Model, own)
 		}
 	}
 	if len(out.Curves) == 0 {

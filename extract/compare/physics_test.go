@@ -195,6 +195,9 @@ func TestFluxCurve(t *testing.T) {
 	if c.Flux.Verdict != result.Differs || !strings.Contains(c.Flux.Sentence, "1 certified value lie") && !strings.Contains(c.Flux.Sentence, "outside") {
 		t.Error(c.Flux.Sentence)
 	}
+	if own := c.Flux.Model[0]; len(c.Flux.Model) != 1 || len(own.X) != len(f.X) || math.Abs(own.Newtonian[3].Value-pn55(f.X[3])) > 1e-14 {
+		t.Errorf("the model's own curve: %+v", own)
+	}
 	if g := c.Flux.Context[0]; len(g.Newtonian) != 61 || math.Abs(g.Newtonian[0].Value-pn55(f.X[0])) > 1e-15 {
 		t.Errorf("context %+v", g)
 	}

@@ -216,6 +216,15 @@ func fluxCurvePicture(f *result.FluxComparison, of string) (picture, bool) {
 	if len(curves) == 0 {
 		return picture{}, false
 	}
+	for _, c := range f.Model {
+		if c.Of == of && len(c.X) > 1 {
+			stretch(&xs, c.X[0])
+			stretch(&xs, c.X[len(c.X)-1])
+			for _, q := range c.Newtonian {
+				stretch(&ys, q.Value)
+			}
+		}
+	}
 	pad := func(r *[2]float64) {
 		w := r[1] - r[0]
 		if w == 0 {
@@ -237,6 +246,18 @@ func fluxCurvePicture(f *result.FluxComparison, of string) (picture, bool) {
 	down := newPanel(cv, "down", x, axis{lo: rs[0], hi: rs[1], from: 376, to: 212}, "x = (M Ω)^(2/3)", "model − reference  (%)", 5)
 	cv.line(plotLeft, down.y.at(0), plotRight, down.y.at(0), "asked")
 	label := 24.0
+	for _, c := range f.Model {
+		if c.Of == of {
+			y := make([]float64, len(c.X))
+			for i := range y {
+				y[i] = c.Newtonian[i].Value
+			}
+			up.curve(c.X, y, "hull")
+		}
+	}
+	cv.line(plotRight+8, label, plotRight+28, label, "hull")
+	cv.text(plotRight+34, label+4, "tick", "start", "model")
+	label += 18
 	for k, c := range curves {
 		class := fmt.Sprintf("s%d", k%markers)
 		name := "all modes"
@@ -244,7 +265,7 @@ func fluxCurvePicture(f *result.FluxComparison, of string) (picture, bool) {
 			name = modeName(c.L, c.M)
 		}
 		cv.marker(k, plotRight+18, label, 3.6, class)
-		cv.text(plotRight+28, label+4, "tick", "start", name)
+		cv.text(plotRight+34, label+4, "tick", "start", name)
 		label += 18
 		for i, v := range c.X {
 			at, r := x.at(v), c.Ratio[i]
@@ -267,7 +288,7 @@ func fluxCurvePicture(f *result.FluxComparison, of string) (picture, bool) {
 		}
 	}
 	return picture{ID: "picture-" + id, Title: title, SVG: cv.String(),
-		Caption: "Above: markers are the reference’s flux over (32/5) x⁵ (energy) or (32/5) x^(7/2) (angular momentum), lines are published post-Newtonian expansions for context. Below: how far the model is off, in per cent of the reference, with error bars; the dashed line is agreement."}, true
+		Caption: "Above: markers are the reference’s flux over (32/5) x⁵ (energy) or (32/5) x^(7/2) (angular momentum), the dashed black line is the model; further lines are published post-Newtonian expansions of the test-particle flux, for context. Below: how far the model is off, in per cent of the reference, with error bars; the dashed line is agreement."}, true
 }
 
 // balancePicture draws losses and fluxes, and their residual with its band.
@@ -278,30 +299,54 @@ func balancePicture(b *result.BalanceOf, id, title, unit string) (picture, bool)
 	n := len(b.U)
 	model, measured, residual, low, high := make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n)
 	ys, rs := [2]float64{math.Inf(1), math.Inf(-1)}, [2]float64{0, 0}
+	// Powers of ten go into the axis titles, so that the ticks stay short.
+	ten, tenBelow := power(b.Measured), power(b.Residual)
 	for i := range b.U {
-		model[i], measured[i], residual[i] = b.Model[i].Value, b.Measured[i].Value, b.Residual[i].Value
-		low[i], high[i] = -b.Residual[i].Error, b.Residual[i].Error
+		model[i], measured[i] = b.Model[i].Value/ten, b.Measured[i].Value/ten
+		residual[i], low[i], high[i] = b.Residual[i].Value/tenBelow, -b.Residual[i].Error/tenBelow, b.Residual[i].Error/tenBelow
 		ys[0], ys[1] = math.Min(ys[0], math.Min(model[i], measured[i])), math.Max(ys[1], math.Max(model[i], measured[i]))
 		rs[0], rs[1] = math.Min(rs[0], math.Min(residual[i], low[i])), math.Max(rs[1], math.Max(residual[i], high[i]))
 	}
 	for _, r := range []*[2]float64{&ys, &rs} {
 		w := r[1] - r[0]
 		if !(w > 1e-9*math.Abs(r[1])) {
-			w = math.Max(0.1*math.Abs(r[1]), 1e-15)
+			w = math.Max(0.1*math.Abs(r[1]), 1e-3)
 		}
 		r[0], r[1] = r[0]-0.1*w, r[1]+0.1*w
 	}
 	cv := newCanvas(id, pictureWidth, 420, title, "Above: what the model’s dynamics lose and what was measured. Below: the residual, model minus measured, with the band of its error bar around zero.")
 	x := axis{lo: b.U[0], hi: b.U[n-1], from: plotLeft, to: plotRight}
-	up := newPanel(cv, "up", x, axis{lo: ys[0], hi: ys[1], from: 190, to: 14}, "", "per u  ("+unit+")", 5)
+	up := newPanel(cv, "up", x, axis{lo: ys[0], hi: ys[1], from: 190, to: 14}, "", "per u  ("+scaled(ten, unit)+")", 5)
 	up.curve(b.U, measured, "curve s0")
 	up.curve(b.U, model, "curve s1")
 	key(cv, 90, "", [2]string{"curve s0", "measured"}, [2]string{"curve s1", "model"})
-	down := newPanel(cv, "down", x, axis{lo: rs[0], hi: rs[1], from: 376, to: 212}, "retarded time u  (M)", "residual  ("+unit+")", 5)
+	down := newPanel(cv, "down", x, axis{lo: rs[0], hi: rs[1], from: 376, to: 212}, "retarded time u  (M)", "residual  ("+scaled(tenBelow, unit)+")", 5)
 	down.curve(b.U, low, "bandedge")
 	down.curve(b.U, high, "bandedge")
 	down.curve(b.U, residual, "wave")
 	key(cv, 290, "", [2]string{"wave", "residual"}, [2]string{"bandedge", "± error bar"})
 	return picture{ID: "picture-" + id, Title: title, SVG: cv.String(),
 		Caption: "Above: what the orbit loses by the model’s force (dashed) and what arrives at infinity and at the horizon (solid), both per unit of u. Below: the residual; a solid line between the dashed ones is agreement inside the error bar."}, true
+}
+
+// power is the power of ten at or below the largest |value|, 1 where all vanish.
+func power(q []result.Q) float64 {
+	top := 0.0
+	for _, v := range q {
+		if finite(v.Value) && finite(v.Error) {
+			top = math.Max(top, math.Max(math.Abs(v.Value), v.Error))
+		}
+	}
+	if top == 0 {
+		return 1
+	}
+	return math.Pow(10, math.Floor(math.Log10(top)))
+}
+
+// scaled names a unit times a power of ten.
+func scaled(ten float64, unit string) string {
+	if ten == 1 {
+		return unit
+	}
+	return tidyExponent(fmt.Sprintf("%.0e", ten)) + " " + unit
 }

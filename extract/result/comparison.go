@@ -122,11 +122,12 @@ type FluxComparison struct {
 	Verdict  string      `json:"verdict"`
 	Sentence string      `json:"sentence"`
 	Curves   []FluxCurve `json:"curves"`
+	Model    []FluxCurve `json:"model"`             // the model's own curves, only Newtonian filled
 	Context  []FluxCurve `json:"context,omitempty"` // published expansions, only Newtonian filled
 }
 
 // FluxCurve is one flux against x = (M Omega)^(2/3). Newtonian is the
-// reference (for context curves: the expansion) divided by (32/5) x^5 for the
+// reference (for model and context curves: these themselves) divided by (32/5) x^5 for the
 // energy and (32/5) x^(7/2) for the angular momentum. Ratio is model/reference.
 type FluxCurve struct {
 	Of        string    `json:"of"` // "energy", "angular momentum"

@@ -108,7 +108,7 @@ func (c *command) against(kase *configs.Case, dir string, f comparing) (*wire.Co
 	for _, e := range []struct {
 		name  string
 		order int
-	}{{"through v^4 (2PN)", 4}, {"through v^7 (3.5PN)", 7}, {"through v^11 (5.5PN)", 11}} {
+	}{{"2PN", 4}, {"3.5PN", 7}, {"5.5PN", 11}} {
 		if kase.Hole.Spin == 0 {
 			w.Context = append(w.Context, compare.Expansion{Name: e.name, Ratio: func(x float64) float64 { return verify.Truncated(math.Sqrt(x), e.order) }})
 		}
