@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"strings"
 
 	"nullmark/extract/result"
 )
@@ -160,41 +161,56 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64) (*re
 		return nil, &InputError{What: "the model's force names neither an energy nor an angular momentum", Remedy: "name energy_rate or angular_momentum_rate"}
 	}
 	out.Note = note[:len(note)-1]
-	judgeBalance(out, bound)
+	var horizon [2]float64
+	if rate && res.Total.Horizon != nil {
+		horizon = [2]float64{res.Total.Horizon.Energy.Value, res.Total.Horizon.AngularMomentum.Value}
+	}
+	judgeBalance(out, bound, horizon)
 	return out, nil
 }
 
 // judgeBalance decides on the averages and, where losses and fluxes must agree
-// at each instant, on every sample.
-func judgeBalance(b *result.Balance, averagesOnly bool) {
-	top, text := 0.0, ""
-	look := func(what string, of *result.BalanceOf) {
+// at each instant, on every sample. horizon holds the average fluxes into the
+// horizon of energy and angular momentum, zero where they are not known.
+func judgeBalance(b *result.Balance, averagesOnly bool, horizon [2]float64) {
+	worst := 0.0
+	var off []string
+	for k, of := range []*result.BalanceOf{b.Energy, b.AngMom} {
 		if of == nil {
-			return
+			continue
 		}
+		top, text := 0.0, ""
 		try := func(residual, measured result.Q, where string) {
 			s := math.Abs(residual.Value) / math.Max(residual.Error, 1e-15*math.Abs(measured.Value))
 			if s > top {
 				top = s
-				text = fmt.Sprintf("%s %s ± %s %% of the measured flux%s", what, signed(100*residual.Value/measured.Value), barText(100*math.Abs(residual.Error/measured.Value)), where)
+				text = fmt.Sprintf("%s by %s ± %s %% of the measured flux%s", [2]string{"energy", "angular momentum"}[k],
+					signed(100*residual.Value/measured.Value), barText(100*math.Abs(residual.Error/measured.Value)), where)
 			}
 		}
-		try(of.Average.Residual, of.Average.Measured, " on average")
+		a := of.Average
+		try(a.Residual, a.Measured, " on average")
+		if h := horizon[k]; h != 0 && math.Abs(a.Residual.Value+h) <= found*a.Residual.Error {
+			text += " (the horizon's share)"
+		}
 		if !averagesOnly {
 			for i := range of.U {
 				try(of.Residual[i], of.Measured[i], " at u = "+short(of.U[i]))
 			}
 		}
+		worst = math.Max(worst, top)
+		if top > 1 {
+			off = append(off, text)
+		}
 	}
-	look("energy", b.Energy)
-	look("angular momentum", b.AngMom)
+	text := strings.Join(off, " and ")
 	switch {
-	case top > found:
+	case worst > found:
 		b.Verdict = result.Differs
-		b.Sentence = "The model's dynamics do not lose what the waves carry away: losses minus fluxes are, for " + text + "."
-	case top > 1:
+		b.Sentence = "The model's dynamics do not lose what the waves carry away: losses less fluxes are off in " + text + "."
+	case worst > 1:
 		b.Verdict = result.CannotTell
-		b.Sentence = "Whether the model's dynamics lose what the waves carry away cannot be told: losses minus fluxes are, for " + text + "."
+		b.Sentence = "Whether the model's dynamics lose what the waves carry away cannot be told: losses less fluxes are off in " + text + "."
 	default:
 		b.Verdict = result.Inside
 		b.Sentence = "The model's dynamics lose what the waves carry away, inside the error bar."

@@ -169,7 +169,11 @@ func (w *waves) parts(p *pair, mc *result.ModeComparison) []string {
 		case drifts:
 			out = append(out, fmt.Sprintf("its phase drifts by %s rad per M, to %s rad", withBar(d.Slope), withBar(d.Max)))
 		case offset:
-			out = append(out, fmt.Sprintf("its phase is off by %s rad throughout", withBar(d.Mean)))
+			text := fmt.Sprintf("its phase is off by %s rad throughout", withBar(d.Mean))
+			if math.Abs(math.Remainder(d.Mean.Value-math.Pi, 2*math.Pi)) < 0.01 {
+				text += " (the sign of the mode is reversed)"
+			}
+			out = append(out, text)
 		default:
 			out = append(out, fmt.Sprintf("its phase is off by up to %s rad", withBar(d.Max)))
 		}
