@@ -28,7 +28,7 @@ const mostShown = 2000
 //
 // where u = t - r_* and v = t + r_* along the orbit, so that both sides
 // integrate to what was lost and what arrived.
-func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64) (*result.Balance, error) {
+func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, master bool) (*result.Balance, error) {
 	s := ref.Series
 	if s == nil || len(s.U) < taps || len(s.Modes) == 0 {
 		return nil, &InputError{What: "the reference holds no waveform to measure the flux from", Remedy: "run it with output.keep: [waveform]"}
@@ -44,7 +44,10 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64) (*re
 	path := newAxis(pathU)
 	lo := math.Max(math.Max(s.JunkUntil, pathU[0]), uAt(ret, f.T[0]))
 	hi := math.Min(pathU[len(pathU)-1], uAt(ret, f.T[len(f.T)-1]))
-	hor := horizonFlux(ref)
+	var hor *horizonSeries
+	if master {
+		hor = horizonFlux(ref)
+	}
 	if hor != nil { // v must be covered as well
 		for i, t := range ret.a.t {
 			if v := t + ret.rstar[i]; v < hor.v.t[0] {
@@ -347,7 +350,7 @@ type horizonSeries struct {
 // and returns nil where the reference does not hold them.
 func horizonFlux(ref *result.Bundle) *horizonSeries {
 	s := ref.Series
-	if s.HorizonPrefix != "psi" || len(s.V) < taps {
+	if len(s.V) < taps {
 		return nil
 	}
 	h := &horizonSeries{v: newAxis(s.V), e: make([]result.Q, len(s.V)), l: make([]result.Q, len(s.V))}

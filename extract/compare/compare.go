@@ -35,6 +35,10 @@ type Input struct {
 	Parameters int
 	Flux       *FluxInput
 	Force      *Force
+	// MasterHorizon says that the reference's horizon series are master
+	// functions, from which the balance can measure the flux at each instant;
+	// otherwise it uses the certified average.
+	MasterHorizon bool
 	// Numbers, when set, is another result whose certified numbers are set
 	// against the reference's.
 	Numbers *result.Result
@@ -78,7 +82,7 @@ func Compare(in Input) (*result.Comparison, *result.Curves, error) {
 		}
 	}
 	if in.Force != nil {
-		if c.Balance, err = in.Force.balance(in.Reference, in.Tortoise); err != nil {
+		if c.Balance, err = in.Force.balance(in.Reference, in.Tortoise, in.MasterHorizon); err != nil {
 			return nil, nil, err
 		}
 	}

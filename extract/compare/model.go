@@ -3,7 +3,6 @@ package compare
 import (
 	"fmt"
 	"sort"
-	"strings"
 
 	"nullmark/extract/result"
 	"nullmark/extract/table"
@@ -60,7 +59,7 @@ func NewFileWaveform(tab *table.Table, time string, modes []ModeColumns) (*FileW
 	if len(modes) == 0 {
 		return nil, &InputError{What: "model.waveform.modes names no mode", Remedy: `write for example {"2,2": h22}`}
 	}
-	if err := inM(tab, time); err != nil {
+	if err := table.InM(tab, time); err != nil {
 		return nil, err
 	}
 	w := &FileWaveform{tab: tab, columns: append([]ModeColumns(nil), modes...)}
@@ -105,20 +104,6 @@ func NewFileWaveform(tab *table.Table, time string, modes []ModeColumns) (*FileW
 		}
 	}
 	return w, nil
-}
-
-// inM refuses a time column whose unit is not M.
-func inM(tab *table.Table, name string) error {
-	c, err := tab.Lookup(name)
-	if err != nil {
-		return err
-	}
-	switch strings.ToLower(c.Unit) {
-	case "s", "sec", "second", "seconds", "ms", "us", "min", "yr", "years":
-		return &table.Fault{File: tab.File(), Array: name, Row: -1, Kind: table.Unit,
-			What: fmt.Sprintf("is in the unit %q", c.Unit), Remedy: "write times in units of the hole's mass M (G = c = 1)"}
-	}
-	return nil
 }
 
 // Times returns the model's times; they must not be changed.

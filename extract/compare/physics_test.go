@@ -149,7 +149,7 @@ func TestBalanceAtBothEnds(t *testing.T) {
 		hor := 24 * 0.01 * math.Exp(2*k*v) * (w*w + k*k) / (32 * math.Pi)
 		f.EnergyRate = append(f.EnergyRate, inf*(1-drs)+hor*(1+drs))
 	}
-	c := mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f})
+	c := mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f, MasterHorizon: true})
 	if c.Balance.Verdict != result.Inside {
 		t.Error(c.Balance.Sentence)
 	}
@@ -159,7 +159,7 @@ func TestBalanceAtBothEnds(t *testing.T) {
 	for i := range f.EnergyRate {
 		f.EnergyRate[i] *= 1 + 1e-6
 	}
-	c = mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f})
+	c = mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f, MasterHorizon: true})
 	if c.Balance.Verdict != result.Differs || !strings.Contains(c.Balance.Sentence, "+1.00e-4") {
 		t.Error(c.Balance.Sentence)
 	}

@@ -68,7 +68,7 @@ func (c *command) compare(cmd *cobra.Command, dir string, f comparing) error {
 	if err != nil {
 		return err
 	}
-	found, curves, err := wire.Compare(bundle, kase.Hole.Spin, *against)
+	found, curves, err := wire.Compare(bundle, kase, *against)
 	if err != nil {
 		return coded(ExitUsage, err)
 	}
@@ -78,7 +78,7 @@ func (c *command) compare(cmd *cobra.Command, dir string, f comparing) error {
 			return err
 		}
 		dir, bundle = settled, again
-		if found, curves, err = wire.Compare(bundle, kase.Hole.Spin, *against); err != nil {
+		if found, curves, err = wire.Compare(bundle, kase, *against); err != nil {
 			return coded(ExitUsage, err)
 		}
 	}

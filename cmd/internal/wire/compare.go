@@ -25,9 +25,9 @@ type Comparison struct {
 }
 
 // Compare opens the files that the model names, reads them as it says and sets
-// them against the result. Errors are *table.Fault and *compare.InputError.
-func Compare(ref *result.Bundle, spin float64, w Comparison) (*result.Comparison, *result.Curves, error) {
-	in := compare.Input{Title: ref.Result.Title, Reference: ref, Tortoise: tortoise(spin)}
+// them against the result of case c. Errors are *table.Fault and *compare.InputError.
+func Compare(ref *result.Bundle, c *configs.Case, w Comparison) (*result.Comparison, *result.Curves, error) {
+	in := compare.Input{Title: ref.Result.Title, Reference: ref, Tortoise: tortoise(c.Hole.Spin), MasterHorizon: c.Waves.Equation == configs.Master}
 	if w.Align.Windowed {
 		in.Align = &[2]float64{w.Align.From, w.Align.To}
 	}
