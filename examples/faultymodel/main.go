@@ -20,9 +20,14 @@
 //	flux   the coefficient of v^3 is 3 pi instead of 4 pi
 //
 // Every other mode is right.
+//
+// With -right it writes the waveform without faults instead, once in every
+// convention that can be read, with a model file for each
+// (strain-minus-particle.yaml and so on): all of them agree with the result.
 package main
 
 import (
+	"flag"
 	"fmt"
 	"math"
 	"math/cmplx"
@@ -36,11 +41,17 @@ import (
 )
 
 func main() {
-	if len(os.Args) != 3 {
+	right := flag.Bool("right", false, "write no faults, and every convention")
+	flag.Parse()
+	if flag.NArg() != 2 {
 		fmt.Fprintln(os.Stderr, "faultymodel: give a result directory and a directory to write to")
 		os.Exit(2)
 	}
-	if err := write(os.Args[1], os.Args[2]); err != nil {
+	do := write
+	if *right {
+		do = writeRight
+	}
+	if err := do(flag.Arg(0), flag.Arg(1)); err != nil {
 		fmt.Fprintln(os.Stderr, "faultymodel:", err)
 		os.Exit(1)
 	}
@@ -69,7 +80,7 @@ func write(from, to string) error {
 	}
 	yaml := "# An invented model with known faults, written by examples/faultymodel.\nmodel:\n  name: invented model with faults\n" +
 		"  quantity: master\n  phase: plus\n"
-	waveform, names, err := waveform(b.Series)
+	waveform, names, err := waveform(b.Series, compare.Convention{Quantity: "master", Phase: "plus"}, fault)
 	if err != nil {
 		return err
 	}
@@ -92,10 +103,40 @@ func write(from, to string) error {
 	return nil
 }
 
-// waveform spoils the modes with m > 0 and returns the file and the entries of
-// the case's table of modes.
-func waveform(s *result.Series) (text string, names []string, err error) {
-	c := compare.Convention{Quantity: "master", Phase: "plus"}
+// writeRight writes the waveform as it is, in every convention.
+func writeRight(from, to string) error {
+	b, _, err := store.Read(from)
+	if err != nil {
+		return err
+	}
+	if err := os.MkdirAll(to, 0o777); err != nil {
+		return err
+	}
+	asItIs := func(_, _ int, _ float64, h complex128) complex128 { return h }
+	for _, quantity := range []string{"strain", "master", "curvature"} {
+		for _, phase := range []string{"minus", "plus"} {
+			for _, of := range []string{"particle", "heavy-body"} {
+				name := quantity + "-" + phase + "-" + of
+				text, names, err := waveform(b.Series, compare.Convention{Quantity: quantity, Phase: phase, PhaseOf: of}, asItIs)
+				if err != nil {
+					return err
+				}
+				yaml := fmt.Sprintf("# An invented model without faults, written by examples/faultymodel.\nmodel:\n  name: %s\n  quantity: %s\n  phase: %s\n  phase_of: %s\n"+
+					"  waveform:\n    file: %s.csv\n    time: u\n    modes: {%s}\n", name, quantity, phase, of, name, strings.Join(names, ", "))
+				for file, data := range map[string]string{name + ".csv": text, name + ".yaml": yaml} {
+					if err := os.WriteFile(filepath.Join(to, file), []byte(data), 0o666); err != nil {
+						return err
+					}
+				}
+			}
+		}
+	}
+	return nil
+}
+
+// waveform spoils the modes with m > 0, writes them in a convention and
+// returns the file and the entries of the model file's table of modes.
+func waveform(s *result.Series, c compare.Convention, spoil func(l, m int, u float64, h complex128) complex128) (text string, names []string, err error) {
 	var b strings.Builder
 	b.WriteString("# M")
 	var columns [][]complex128
@@ -111,7 +152,7 @@ func waveform(s *result.Series) (text string, names []string, err error) {
 		}
 		h := make([]complex128, len(u))
 		for i := range u {
-			h[i] = fault(m.L, m.M, u[i], m.Wave[first+i])
+			h[i] = spoil(m.L, m.M, u[i], m.Wave[first+i])
 		}
 		z, err := c.FromStrain(m.L, m.M, u, h)
 		if err != nil {

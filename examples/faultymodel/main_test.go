@@ -48,7 +48,38 @@ func TestFaultsAreFound(t *testing.T) {
 	if err := write(from, to); err != nil {
 		t.Fatal(err)
 	}
-	model, _, err := configs.Reader{}.ReadModel(filepath.Join(to, "model.yaml"))
+	c, model := compared(t, b, filepath.Join(to, "model.yaml"))
+	for i, want := range []string{"the sign of the mode is reversed", "drifts by +2.00e-4", "(3,2) agrees", "too small by 0.01 "} {
+		if !strings.Contains(c.Modes[i].Sentence, want) {
+			t.Errorf("%q does not say %q", c.Modes[i].Sentence, want)
+		}
+	}
+	for _, name := range []string{model.Force.File, model.Flux.File} {
+		if _, err := os.Stat(name); err != nil {
+			t.Error(err)
+		}
+	}
+	if err := writeRight(from, to); err != nil {
+		t.Fatal(err)
+	}
+	right, err := filepath.Glob(filepath.Join(to, "*-*.yaml"))
+	if err != nil || len(right) != 12 {
+		t.Fatalf("%v %v", right, err)
+	}
+	for _, path := range right {
+		if c, _ := compared(t, b, path); c.Overall.Verdict != result.Inside {
+			t.Errorf("%s: %s", path, c.Overall.Sentence)
+		}
+	}
+	if write(filepath.Join(dir, "none"), to) == nil {
+		t.Error("no result, and no error")
+	}
+}
+
+// compared reads a model file and compares its waveform.
+func compared(t *testing.T, b *result.Bundle, path string) (*result.Comparison, *configs.Model) {
+	t.Helper()
+	model, _, err := configs.Reader{}.ReadModel(path)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -65,21 +96,9 @@ func TestFaultsAreFound(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	c, _, err := compare.Compare(compare.Input{Reference: b, Model: wave, Convention: compare.Convention{Quantity: model.Quantity, Phase: model.Phase}})
+	c, _, err := compare.Compare(compare.Input{Reference: b, Model: wave, Convention: compare.Convention{Quantity: model.Quantity, Phase: model.Phase, PhaseOf: model.PhaseOf}})
 	if err != nil {
 		t.Fatal(err)
 	}
-	for i, want := range []string{"the sign of the mode is reversed", "drifts by +2.00e-4", "(3,2) agrees", "too small by 0.01 "} {
-		if !strings.Contains(c.Modes[i].Sentence, want) {
-			t.Errorf("%q does not say %q", c.Modes[i].Sentence, want)
-		}
-	}
-	for _, name := range []string{model.Force.File, model.Flux.File} {
-		if _, err := os.Stat(name); err != nil {
-			t.Error(err)
-		}
-	}
-	if write(filepath.Join(dir, "none"), to) == nil {
-		t.Error("no result, and no error")
-	}
+	return c, model
 }

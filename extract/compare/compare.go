@@ -286,13 +286,14 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 			p.model[i] *= complex(co, si)
 		}
 	}
+	var mid, off, drift float64 // of the constants that curvature lacks
 	if w.conv.Quantity == "curvature" {
 		d := make([]complex128, n)
 		for i := range d {
 			d[i] = p.model[i] - p.ref[i]
 		}
 		was := append([]complex128(nil), d...)
-		lessLinear(w.u, d, was)
+		mid, off, drift = lessLinear(w.u, d, was, p.bars())
 		for i := range d {
 			p.model[i] = p.ref[i] + d[i]
 		}
@@ -310,6 +311,9 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 		p.reading = math.Max(p.reading, e)
 	}
 	w.times.addBar(p.readBar, at, raw.own)
+	for i, x := range w.u {
+		p.readBar[i] += off + drift*math.Abs(x-mid)
+	}
 	return p, nil
 }
 

@@ -158,6 +158,29 @@ func TestConventionsRoundTrip(t *testing.T) {
 	}
 }
 
+// The constants that curvature lacks are taken from where the reference is
+// good: an early error inside early, large bars is not blamed on a right model.
+func TestCurvatureWithAPoorStart(t *testing.T) {
+	ref := reference(someModes, 1e-7, nil)
+	for i := range ref.Series.Modes {
+		m := &ref.Series.Modes[i]
+		for k, u := range ref.Series.U {
+			if u >= 40 {
+				e := 1e-3 * math.Exp(-(u-40)/20)
+				m.WaveErr[k] += e
+				m.Wave[k] += complex(0.9*e, 0)
+			}
+		}
+	}
+	c := Convention{Quantity: "curvature"}
+	cmp := mustCompare(t, Input{Reference: ref, Convention: c, Model: model(grid(0, 560, 0.1), someModes, truth).in(c)})
+	for _, m := range cmp.Modes {
+		if m.Verdict != result.Inside {
+			t.Error(m.Sentence)
+		}
+	}
+}
+
 // Conversions against their formulas, worked by hand: l = 2 master functions
 // carry sqrt(24); psi4 of A e^{-i w t} is -w^2/2 of it; per nu is per mu times
 // nu/mu = 1/(1+q)^2.

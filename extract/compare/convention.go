@@ -114,7 +114,7 @@ func (c Convention) toStrain(l, m int, a axis, z []complex128) []float64 {
 		z[i] = 2 * h[i]
 		e[i] = z[i] - 2*e[i]
 	}
-	lessLinear(a.t, e, e)
+	lessLinear(a.t, e, e, nil)
 	miss := make([]float64, len(e))
 	for i, x := range e {
 		miss[i] = cmplx.Abs(x)
@@ -122,28 +122,48 @@ func (c Convention) toStrain(l, m int, a axis, z []complex128) []float64 {
 	return miss
 }
 
-// lessLinear subtracts from z the linear function of t that fits ref best.
-func lessLinear(t []float64, z, ref []complex128) {
-	mid := (t[0] + t[len(t)-1]) / 2
+// lessLinear subtracts from z the linear function of t that fits ref best, with
+// weights 1/bar^2 (bar nil: equal weights). off and drift bound what errors of
+// ref inside its bars, conspiring, do to that function: at t they change it by
+// at most off + drift |t - mid|.
+func lessLinear(t []float64, z, ref []complex128, bar []float64) (mid, off, drift float64) {
+	least := math.Inf(1)
+	for _, b := range bar {
+		if b > 0 {
+			least = math.Min(least, b)
+		}
+	}
+	weight := func(i int) float64 {
+		if bar == nil || !(bar[i] > least) {
+			return 1
+		}
+		return (least / bar[i]) * (least / bar[i])
+	}
 	var s0, s1, s2 float64
+	for i, x := range t {
+		s0 += weight(i)
+		s1 += weight(i) * (x - t[0])
+	}
+	mid = t[0] + s1/s0
 	var b0, b1 complex128
 	for i, x := range t {
-		d := x - mid
-		s0++
-		s1 += d
-		s2 += d * d
-		b0 += ref[i]
-		b1 += complex(d, 0) * ref[i]
+		w, d := weight(i), x-mid
+		s2 += w * d * d
+		b0 += complex(w, 0) * ref[i]
+		b1 += complex(w*d, 0) * ref[i]
+		if bar != nil {
+			off += w * bar[i]
+			drift += w * math.Abs(d) * bar[i]
+		}
 	}
-	det := s0*s2 - s1*s1
-	if det <= 0 {
-		return
+	if s2 <= 0 {
+		return mid, 0, 0
 	}
-	p := (complex(s2, 0)*b0 - complex(s1, 0)*b1) / complex(det, 0)
-	q := (complex(s0, 0)*b1 - complex(s1, 0)*b0) / complex(det, 0)
+	p, q := b0/complex(s0, 0), b1/complex(s2, 0)
 	for i, x := range t {
 		z[i] -= p + q*complex(x-mid, 0)
 	}
+	return mid, off / s0, drift / s2
 }
 
 // FromStrain writes r h_lm/mu, sampled at the increasing times t (at least ten
