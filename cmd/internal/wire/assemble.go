@@ -14,8 +14,6 @@ import (
 	"nullmark/extract/result"
 	"nullmark/extract/strain"
 	"nullmark/hyperboloidal"
-
-	"go.yaml.in/yaml/v3"
 )
 
 const (
@@ -25,7 +23,7 @@ const (
 
 // assemble turns finished ladders into the data of a result.
 func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
-	tree, err := caseTree(c)
+	tree, err := c.Tree()
 	if err != nil {
 		return nil, err
 	}
@@ -58,19 +56,6 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	return &result.Bundle{Result: res, Series: r.series(c)}, nil
 }
 
-// caseTree is the resolved case as plain maps and lists.
-func caseTree(c *configs.Case) (any, error) {
-	text, err := c.YAML()
-	if err != nil {
-		return nil, err
-	}
-	var tree any
-	if err := yaml.Unmarshal(text, &tree); err != nil {
-		return nil, err
-	}
-	return tree, nil
-}
-
 func (r *circularRun) describe() *result.Orbit {
 	o := r.orbit
 	return &result.Orbit{
@@ -87,7 +72,7 @@ func (r *circularRun) entry(m *ladder, rung int) result.Mode {
 	t := m.mode.tone
 	inf, hor := m.bars[certify.Infinity], m.bars[certify.Horizon]
 	out := result.Mode{
-		L: t.L, M: t.M, Parity: parityName(m.mode.parity), Measure: rate, Counts: bothSigns,
+		L: t.L, M: t.M, Parity: m.mode.parity.String(), Measure: rate, Counts: bothSigns,
 		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Infinity]), inf.Bar()),
 		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Horizon]), hor.Bar()),
 		Met:      m.met, Why: m.why, Rung: rung,
@@ -176,9 +161,12 @@ func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
-			// A mode below the floor is held to the floor: the same fraction
-			// of the asked accuracy on the scale asked/floor.
-			scale := math.Max(f.Energy.Value, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			scale := f.Energy.Value
+			if scale < c.Accuracy.Floor*largest[e] {
+				// Below the floor the bar is held to floor times the largest,
+				// which is the asked accuracy on this scale.
+				scale = math.Max(scale, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			}
 			if rel := f.Energy.Error / scale; rel > a.Worst.Relative {
 				a.Worst = result.Worst{L: m.L, M: m.M, What: "energy at " + certify.End(e).String(), Relative: rel}
 			}

@@ -9,7 +9,6 @@ import (
 	"strings"
 
 	"nullmark/configs"
-	"nullmark/equations"
 	"nullmark/extract/certify"
 	"nullmark/extract/result"
 	"nullmark/hyperboloidal"
@@ -155,7 +154,10 @@ func (r *circularRun) scouting(ctx context.Context) error {
 	}
 	for _, m := range r.modes {
 		for e := range m.allow {
-			m.allow[e] = math.Max(r.asked, r.floor*largest[e]/m.size(e))
+			m.allow[e] = r.asked
+			if size := m.size(e); size < r.floor*largest[e] {
+				m.allow[e] = math.Max(r.asked, r.floor*largest[e]/size)
+			}
 		}
 		m.rung = r.startRung(m)
 	}
@@ -180,7 +182,7 @@ func (r *circularRun) startRung(m *ladder) int {
 		ok := true
 		for e := range m.allow {
 			// Below 2e-12 round-off rules whatever the grid.
-			ok = ok && certify.Predict(certify.End(e), m.mode.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 2e-12)/2
+			ok = ok && certify.Predict(certify.End(e), m.mode.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 4e-12)/2
 		}
 		if ok {
 			break
@@ -283,6 +285,7 @@ func (r *circularRun) round(ctx context.Context, round int, pending []*ladder) e
 				until = math.Max(until, m.until)
 			}
 		}
+		expected := until
 		var more func([]certify.Samples, float64) float64
 		if round == 0 && r.n.until == 0 {
 			more = r.more(b, r.n.grid(k).N)
@@ -299,6 +302,7 @@ func (r *circularRun) round(ctx context.Context, round int, pending []*ladder) e
 		}
 		if round == 0 {
 			for j := k - 1; j > k-r.n.rungs; j-- {
+				r.expect(j, fine.Until-expected)
 				coarse, err := r.block(ctx, fmt.Sprintf("%s-rung-%d", name, j), b, j, fine.Until, nil)
 				if err != nil {
 					return err
@@ -337,7 +341,7 @@ func (r *circularRun) certify(m *ladder) error {
 			z = append(z, rd.Z)
 		}
 		bar := certify.Budget{
-			Discretisation: certify.Discretisation(z),
+			Discretisation: certify.Discretisation(z, min(r.n.order, r.n.moments)),
 			Transient:      fine.Transient(end, m.mode.tone, m.until),
 			RoundOff:       certify.RoundOff(m.points[m.rung], m.mode.tone.Omega),
 		}
@@ -369,8 +373,16 @@ func (r *circularRun) block(ctx context.Context, key string, modes []*ladder, k 
 	for _, m := range modes {
 		list = append(list, m.mode)
 	}
+	longer := more
+	if more != nil {
+		longer = func(s []certify.Samples, until float64) float64 {
+			next := more(s, until)
+			r.expect(k, next-until)
+			return next
+		}
+	}
 	b, err := kept(r.o.Keep, key, func() (*blockRun, error) {
-		return r.n.evolveBlock(ctx, list, r.orbit.rstar, k, until, more, r.meter.did)
+		return r.n.evolveBlock(ctx, list, r.orbit.rstar, k, until, longer, r.meter.did)
 	})
 	if err == nil {
 		r.log(k, modes, b)
@@ -408,5 +420,3 @@ func chunk(n int) [][2]int {
 	}
 	return out
 }
-
-func parityName(p equations.Parity) string { return p.String() }

@@ -95,7 +95,10 @@ func (n *numerics) place(rstar float64) {
 	n.coarsestDx = certify.CoarsestSpacing
 	n.widest = n.cells * n.coarsestDx
 	w := source.NewKernel(n.widest, n.moments).Reach() + n.gap
-	n.domain = hyperboloidal.Layers{Si: rstar - w - n.inner, Ri: rstar - w, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
+	// An inner layer that began far out would squeeze a large radius into its
+	// thickness, and the stretched coordinate would be stiff.
+	ri := math.Min(rstar-w, 0)
+	n.domain = hyperboloidal.Layers{Si: ri - n.inner, Ri: ri, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
 	if n.points > 0 {
 		// The asked points are those of the finest rung, which is rung
 		// rungs-1 of a ladder whose coarsest spacing follows.

@@ -28,12 +28,6 @@ func planCircular(c *configs.Case, n numerics) (*Plan, error) {
 	lots := map[int]*lot{}
 	for _, m := range r.modes {
 		m.allow = [2]float64{r.asked, r.asked}
-		// Newtonian estimate of how a mode's flux compares with (2,2).
-		small := math.Pow(1/r.orbit.r0, float64(m.mode.tone.L-2)) * math.Pow(float64(m.mode.tone.M)/float64(m.mode.tone.L), float64(2*m.mode.tone.L))
-		if small > 0 {
-			m.allow[0] = math.Max(r.asked, r.floor/small)
-			m.allow[1] = math.Max(r.asked, r.floor*math.Pow(r.orbit.r0, 2*float64(m.mode.tone.L-2)))
-		}
 		m.rung = r.startRung(m)
 		g := r.n.grid(m.rung)
 		until := r.firstUntil(m) + 250
