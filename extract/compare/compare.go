@@ -234,6 +234,9 @@ type loaded struct {
 	rounded float64
 }
 
+// outlandish is a size that no waveform has.
+const outlandish = 1e40
+
 // raw loads a mode and converts it.
 func (w *waves) raw(lm [2]int) (loaded, error) {
 	s, err := w.in.Model.Load(lm[0], lm[1])
@@ -241,6 +244,12 @@ func (w *waves) raw(lm [2]int) (loaded, error) {
 		return loaded{}, err
 	}
 	r := loaded{z: s.Z[w.from:w.to], rounded: s.Rounded}
+	for i, x := range r.z {
+		if math.Abs(real(x)) > outlandish || math.Abs(imag(x)) > outlandish {
+			return loaded{}, &InputError{What: fmt.Sprintf("the model's mode %s is %.3g in row %d, at time %s", modeName(lm[0], lm[1]), x, w.from+i, short(w.in.Model.Times()[w.from+i])),
+				Remedy: "check the file: r h/mu is of order one or smaller"}
+		}
+	}
 	if s.Err != nil {
 		r.own = s.Err[w.from:w.to]
 		f := math.Abs(w.conv.factor(lm[0], lm[1]))

@@ -179,6 +179,13 @@ func TestCurvatureWithAPoorStart(t *testing.T) {
 			t.Error(m.Sentence)
 		}
 	}
+	// Nor does it hide a fault that only the good part can show.
+	louder := model(grid(0, 560, 0.1), someModes, func(l, m int, u float64) complex128 { return truth(l, m, u) * (1 + 1e-5) })
+	for _, m := range mustCompare(t, Input{Reference: ref, Convention: c, Model: louder.in(c)}).Modes {
+		if m.Verdict != result.Differs {
+			t.Error(m.Sentence)
+		}
+	}
 }
 
 // Conversions against their formulas, worked by hand: l = 2 master functions
@@ -563,6 +570,53 @@ func TestVanishingReference(t *testing.T) {
 	for _, m := range c.Modes {
 		if m.Verdict != result.Differs {
 			t.Errorf("%s", m.Sentence)
+		}
+	}
+}
+
+// Whatever a model holds, the outcome is a comparison that JSON can carry, or
+// a sentence.
+func TestOddModels(t *testing.T) {
+	rng := rand.New(rand.NewSource(7))
+	odd := map[string]func(l, m int, u float64) complex128{
+		"noise":    func(int, int, float64) complex128 { return complex(rng.NormFloat64(), rng.NormFloat64()) },
+		"constant": func(int, int, float64) complex128 { return 1 },
+		"spikes": func(_, _ int, u float64) complex128 {
+			if math.Mod(u, 50) == 0 {
+				return 1
+			}
+			return 0
+		},
+		"tiny":     func(l, m int, u float64) complex128 { return 1e-300 * truth(l, m, u) },
+		"huge":     func(l, m int, u float64) complex128 { return 1e39 * truth(l, m, u) },
+		"too huge": func(int, int, float64) complex128 { return 1e200 },
+		"fast":     func(l, m int, u float64) complex128 { return cmplx.Exp(complex(0, -6.1*u)) },
+	}
+	for name, f := range odd {
+		for _, c := range []Convention{{}, {Quantity: "curvature"}, {Quantity: "master", Phase: "plus"}} {
+			for _, align := range []*[2]float64{nil, {300, 400}} {
+				got, curves, err := Compare(Input{Reference: reference(someModes, 1e-9, nil), Model: model(grid(0, 560, 0.5), someModes, f), Convention: c, Align: align})
+				if err != nil {
+					if _, ok := err.(*InputError); !ok {
+						t.Errorf("%s: %T %v", name, err, err)
+					}
+					continue
+				}
+				if name == "too huge" {
+					t.Errorf("%s: was believed", name)
+				}
+				if _, err := json.Marshal(got); err != nil {
+					t.Errorf("%s %+v %v: %v", name, c, align, err)
+				}
+				if err := WriteCurves(&bytes.Buffer{}, curves); err != nil {
+					t.Error(err)
+				}
+				for _, m := range got.Modes {
+					if m.Verdict == result.Inside {
+						t.Errorf("%s: %s", name, m.Sentence)
+					}
+				}
+			}
 		}
 	}
 }
