@@ -193,24 +193,26 @@ func condense(u, y, b []float64, marks []marker, stages []stage) *result.Differe
 	return d
 }
 
-// largest returns the sample whose |y| - b is largest, the largest difference
-// that is certain, or the largest |y| where no sample exceeds its bar.
+// largest returns the difference of which most is certain: the largest |y| less
+// found times its bar, else the largest |y| less its bar, else the largest |y|.
 func largest(y, b []float64) (result.Q, bool) {
-	best, sure := -1, -1
+	best, rank := -1, 0
+	sure := 0.0
 	for i := range y {
 		if math.IsNaN(y[i]) {
 			continue
 		}
 		a := math.Abs(y[i])
-		if best < 0 || a > math.Abs(y[best]) {
-			best = i
+		r, x := 0, a
+		switch {
+		case a > found*b[i]:
+			r, x = 2, a-found*b[i]
+		case a > b[i]:
+			r, x = 1, a-b[i]
 		}
-		if a > b[i] && (sure < 0 || a-b[i] > math.Abs(y[sure])-b[sure]) {
-			sure = i
+		if best < 0 || r > rank || r == rank && x > sure {
+			best, rank, sure = i, r, x
 		}
-	}
-	if sure >= 0 {
-		best = sure
 	}
 	if best < 0 {
 		return result.Q{}, false

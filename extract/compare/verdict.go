@@ -198,7 +198,7 @@ func (w *waves) parts(p *pair, mc *result.ModeComparison) []string {
 		}
 	}
 	if len(out) == 0 {
-		out = append(out, fmt.Sprintf("model and reference are %s bars apart where the reference is weak", short2(mc.Significance)))
+		out = append(out, fmt.Sprintf("model and reference are up to %s error bars apart, phase and amplitude taken together", short2(mc.Significance)))
 	}
 	return out
 }
