@@ -105,7 +105,11 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 	if bound {
 		note += "On a motion whose radius oscillates, energy stored in the near field makes losses and fluxes differ at each instant; only the averages have to agree. "
 	}
-	window := periods(u, res.Orbit)
+	window, whole := periods(u, res.Orbit)
+	if !whole {
+		return nil, &InputError{What: fmt.Sprintf("the balance covers u = %s … %s, less than two radial periods of %s M", short(u[0]), short(u[len(u)-1]), short(res.Orbit.Numbers["period_r"])),
+			Remedy: "give the force over a longer time, or run the reference longer (span.until)"}
+	}
 	if window < len(u) {
 		note += fmt.Sprintf("Averages are over whole radial periods, u = %s … %s. ", short(u[0]), short(u[window-1]))
 	}
@@ -402,17 +406,17 @@ func (h *horizonSeries) add(e, l []result.Q, v, dvdu []float64) {
 }
 
 // periods is the number of leading samples that make whole radial periods, or
-// all of them where the orbit has none (or less than two fit).
-func periods(u []float64, o *result.Orbit) int {
+// all of them where the orbit has none; ok is false when less than two fit.
+func periods(u []float64, o *result.Orbit) (n int, ok bool) {
 	if o == nil || !(o.Numbers["period_r"] > 0) {
-		return len(u)
+		return len(u), true
 	}
 	p := o.Numbers["period_r"]
 	k := math.Floor((u[len(u)-1] - u[0]) / p)
 	if k < 2 {
-		return len(u)
+		return 0, false
 	}
-	return nearest(u, u[0]+k*p) + 1
+	return nearest(u, u[0]+k*p) + 1, true
 }
 
 // mean is the average over u by the trapezoidal rule.

@@ -165,6 +165,24 @@ func TestBalanceAtBothEnds(t *testing.T) {
 	}
 }
 
+// Averages are over whole radial periods, two at least.
+func TestWholePeriods(t *testing.T) {
+	u := grid(100, 1000, 0.5)
+	for period, want := range map[float64]int{0: len(u), 200: 1601, 449: 1797, 500: 0} {
+		n, ok := periods(u, &result.Orbit{Kind: "eccentric", Numbers: map[string]float64{"period_r": period}})
+		if n != want || ok != (want > 0) {
+			t.Errorf("period %v: %d samples, %v; want %d", period, n, ok, want)
+		}
+	}
+	b := circular()
+	b.Result.Orbit.Kind, b.Result.Orbit.Numbers["period_r"] = "eccentric", 300
+	f := &Force{T: b.Series.T, EnergyRate: make([]float64, len(b.Series.T))}
+	_, _, err := Compare(Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f})
+	if err == nil || !strings.Contains(err.Error(), "less than two radial periods of 300 M") {
+		t.Errorf("%v", err)
+	}
+}
+
 // The 5.5PN curve against a sweep of certified orbits, r = 6 and 10 of the
 // frequency-domain method, and a run against itself.
 func TestFluxCurve(t *testing.T) {

@@ -109,10 +109,10 @@ func (w *waves) verdict(p *pair, mc *result.ModeComparison, worst, first int, st
 			name, barText(readRel), barText(refRel))
 	case s > 1:
 		mc.Verdict = result.CannotTell
-		need := settle(refRel, cmplx.Abs(p.model[worst]-p.ref[worst])/p.scale/4, asked)
+		need := settle(p.bar(worst), cmplx.Abs(p.model[worst]-p.ref[worst])/4, asked)
 		mc.Settles = &need
 		mc.Sentence = fmt.Sprintf("%s cannot be told: the difference reaches %s times the error bar, too little to count (at u = %s); accuracy.relative: %s would settle it.",
-			name, short2(s), short(p.u[worst]), barText(need))
+			name, fmt.Sprintf("%.3g", s), short(p.u[worst]), barText(need))
 	case unmet && s > quiet:
 		mc.Verdict = result.CannotTell
 		need := settle(refRel, asked, asked)

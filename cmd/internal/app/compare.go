@@ -9,6 +9,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -132,6 +133,11 @@ func (c *command) against(kase *configs.Case, dir string, f comparing) (*wire.Co
 	case kase.Model == nil:
 		return nil, usagef("the case of %s names no model: give one with --model MODEL.yaml, or another result with --with DIR", dir)
 	case len(c.sets) > 0:
+		for _, set := range c.sets {
+			if !strings.HasPrefix(set, "model.") && !strings.HasPrefix(set, "align") {
+				return nil, usagef("--set %s changes nothing of a finished run's model; write model.key=value or align=value", set)
+			}
+		}
 		path := filepath.Join(dir, "case.yaml")
 		var again *configs.Case
 		if again, err = (configs.Reader{Sets: c.sets}).Read(path); err == nil {

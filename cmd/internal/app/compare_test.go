@@ -130,6 +130,7 @@ func TestCompareUsesTheCasesModel(t *testing.T) {
 		"no column":      {[]string{"compare", "res", "--set", "model.waveform.time=u"}, ExitUsage, `m.csv: column "u": is not there; the file holds: t, re, im`},
 		"no other":       {[]string{"compare", "res", "--with", "nowhere"}, ExitUsage, "nowhere is not a usable result directory"},
 		"not a model":    {[]string{"compare", "res", "--model", "case.yaml"}, ExitUsage, "does not belong in a model file"},
+		"--set of a run": {[]string{"compare", "res", "--set", "orbit.radius=7"}, ExitUsage, "--set orbit.radius=7 changes nothing of a finished run's model"},
 		"--set and with": {[]string{"compare", "res", "--with", "res", "--set", "model.phase=plus"}, ExitUsage, "--set changes a model"},
 	} {
 		if what == "no model" {
