@@ -133,9 +133,9 @@ func capital(s string) string {
 // verdictCell stands out where something is wrong, in words and in weight.
 func verdictCell(v string) cell {
 	if v == result.Inside {
-		return cell{verdictWord(v), ""}
+		return cell{"inside", ""}
 	}
-	return cell{verdictWord(v), "unmet"}
+	return cell{verdictWord(v), "off"}
 }
 
 func pairHeads(text, unit string) []head {
@@ -150,7 +150,7 @@ func comparedModesTable(modes []result.ModeComparison) []table {
 	t.Heads = append(t.Heads, pairHeads("largest phase difference", "rad")...)
 	t.Heads = append(t.Heads, pairHeads("phase drift", "rad/M")...)
 	t.Heads = append(t.Heads, pairHeads("largest amplitude difference", "relative")...)
-	t.Heads = append(t.Heads, head{Text: "difference over bar, largest", Num: true})
+	t.Heads = append(t.Heads, head{Text: "largest, in bars", Num: true})
 	for i := range modes {
 		m := &modes[i]
 		r := row{Heads: []string{fmt.Sprint(m.L), fmt.Sprint(m.M)}, Cells: []cell{verdictCell(m.Verdict)}}
