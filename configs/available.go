@@ -14,7 +14,7 @@ var features = map[string]bool{
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,
 	"pulse":                       false,
-	"model":                       false,
+	"model":                       true,
 }
 
 // lacks reports whether the feature is known and switched off.
