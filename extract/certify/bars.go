@@ -36,7 +36,7 @@ const (
 	// difference of the two finest rungs, Ratio^p/(1-Ratio^p), is the bar: 0.1
 	// of the difference at order 12, of which 0.03 (where the kernel's order 16
 	// rules) to 0.07 are seen.
-	margin = 1.36
+	margin = 1.25
 	// guard replaces a difference that is small by accident (it crosses zero
 	// where two terms of the error cancel) by this fraction of the next
 	// coarser difference.

@@ -34,7 +34,7 @@ func planCircular(c *configs.Case, n numerics) (*Plan, error) {
 		if r.n.until > 0 {
 			until = r.n.until
 		}
-		p.Modes = append(p.Modes, PlannedMode{L: m.mode.tone.L, M: m.mode.tone.M, Points: g.N, Dx: g.Dx,
+		p.Modes = append(p.Modes, PlannedMode{L: m.circ.tone.L, M: m.circ.tone.M, Points: g.N, Dx: g.Dx,
 			Dt: r.n.courant * g.Dx, Kernel: r.n.cells * g.Dx, Until: until, Rung: m.rung})
 		if lots[m.rung] == nil {
 			lots[m.rung] = &lot{}
