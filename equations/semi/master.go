@@ -95,12 +95,12 @@ func NewGeometry(s hyperboloidal.Layers, g grid.Grid, order int) (*Geometry, err
 	if geo.half == 6 {
 		geo.d1 = [6]float64(d1.Centre[7:])
 	}
+	flatLo, flatHi := flatPart(geo.Points, d2.Half)
 	for i, p := range geo.Points {
 		geo.k[i] = 1 / (2 - p.Boost)
 		inner := i >= d2.Half && i < n-d2.Half
 		switch {
-		case flat(p) && inner:
-			geo.k[i] = 1
+		case i >= flatLo && i < flatHi:
 			geo.centre[i] = geo.d2[0]
 			geo.add(rows{form: flatRows, lo: i, hi: i + 1})
 		case inner && geo.half == 6:
@@ -165,6 +165,21 @@ func (g *Geometry) addAny(i int, p hyperboloidal.Point, d1, d2 *stencil.Operator
 	}
 	w[2*(i-lo)+1] += -k * p.HeightPrime
 	g.add(rows{form: anyRows, lo: i, hi: i + 1, w: w, width: hi - lo, first: lo})
+}
+
+// flatPart returns the longest run of flat points with half neighbours on both
+// sides. Where a layer sets in smoothly, roundings make single points of it
+// flat, which are better served as part of the layer.
+func flatPart(points []hyperboloidal.Point, half int) (lo, hi int) {
+	from := half
+	for i := half; i < len(points)-half; i++ {
+		if !flat(points[i]) {
+			from = i + 1
+		} else if i+1-from > hi-lo {
+			lo, hi = from, i+1
+		}
+	}
+	return lo, hi
 }
 
 func flat(p hyperboloidal.Point) bool {
