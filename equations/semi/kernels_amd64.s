@@ -135,25 +135,33 @@ flat256done:
 // The weights of one row stand 112 bytes apart: twelve on psi, then c at 96 and
 // e at 104.
 
-// PSI2 loads a column of psi and adds it to the sums of two rows, Z22 and Z23,
-// with the weights at w0 of the first and w1 of the second row.
-#define PSI2(column, w0, w1) \
-	VMOVUPD     column(SI), Z16    \
-	VMULPD.BCST w0(R9), Z16, Z17   \
-	VMULPD.BCST w1(R9), Z16, Z18   \
-	VADDPD      Z17, Z22, Z22      \
-	VADDPD      Z18, Z23, Z23
+// ROW adds to a row's sum its weight at w times a column of psi in register z.
+#define ROW(z, w, sum) \
+	VMULPD.BCST w(R9), z, Z5 \
+	VADDPD      Z5, sum, sum
 
-// DIFF2 is the term d (r+ - r-) of two rows, added to Z24 and Z25.
-#define DIFF2(d, above0, below0, above1, below1) \
-	VSUBPD below0, above0, Z19 \
-	VSUBPD below1, above1, Z20 \
-	VMULPD d, Z19, Z19         \
+// DIFF4 is the term d (r+ - r-) of four rows, added to Z16..Z19.
+#define DIFF4(d, above0, above1, above2, above3, below0, below1, below2, below3) \
+	VSUBPD below0, above0, Z20 \
+	VSUBPD below1, above1, Z21 \
+	VSUBPD below2, above2, Z22 \
+	VSUBPD below3, above3, Z23 \
 	VMULPD d, Z20, Z20         \
-	VADDPD Z19, Z24, Z24       \
-	VADDPD Z20, Z25, Z25
+	VMULPD d, Z21, Z21         \
+	VMULPD d, Z22, Z22         \
+	VMULPD d, Z23, Z23         \
+	VADDPD Z20, Z16, Z16       \
+	VADDPD Z21, Z17, Z17       \
+	VADDPD Z22, Z18, Z18       \
+	VADDPD Z23, Z19, Z19
 
-// PSI1 and DIFF1 are the same for one row, with the sums Z22 and Z24.
+// REST makes e pi + c s of a row in s, the weights at c and e.
+#define REST(s, pi, c, e) \
+	VMULPD.BCST c(R9), s, s   \
+	VMULPD.BCST e(R9), pi, pi \
+	VADDPD      s, pi, s
+
+// PSI1 and DIFF1 are the like for one row, with the sums Z22 and Z24.
 #define PSI1(column, w0) \
 	VMOVUPD     column(SI), Z16    \
 	VMULPD.BCST w0(R9), Z16, Z17   \
@@ -180,11 +188,11 @@ TEXT ·rows13AVX512(SB), NOSPLIT, $0-56
 	VBROADCASTSD 24(AX), Z29
 	VBROADCASTSD 32(AX), Z30
 	VBROADCASTSD 40(AX), Z31
-	SUBQ $2, CX
+	SUBQ $4, CX
 	JLT  rows512last
 
-rows512two:
-	// Z0..Z13 = pi at -6..7.
+rows512four:
+	// Z0..Z15 = pi at -6..9: four rows share their loads.
 	VMOVUPD -384(R8), Z0
 	VMOVUPD -320(R8), Z1
 	VMOVUPD -256(R8), Z2
@@ -199,63 +207,118 @@ rows512two:
 	VMOVUPD 320(R8), Z11
 	VMOVUPD 384(R8), Z12
 	VMOVUPD 448(R8), Z13
+	VMOVUPD 512(R8), Z14
+	VMOVUPD 576(R8), Z15
 
-	VSUBPD Z5, Z7, Z24
-	VSUBPD Z6, Z8, Z25
-	VMULPD Z26, Z24, Z24
-	VMULPD Z26, Z25, Z25
-	DIFF2(Z27, Z8, Z4, Z9, Z5)
-	DIFF2(Z28, Z9, Z3, Z10, Z4)
-	DIFF2(Z29, Z10, Z2, Z11, Z3)
-	DIFF2(Z30, Z11, Z1, Z12, Z2)
-	DIFF2(Z31, Z12, Z0, Z13, Z1)
-	VMULPD.BCST 96(R9), Z24, Z24
-	VMULPD.BCST 208(R9), Z25, Z25
-	VMULPD.BCST 104(R9), Z6, Z6
-	VMULPD.BCST 216(R9), Z7, Z7
-	VADDPD      Z24, Z6, Z24
-	VADDPD      Z25, Z7, Z25
+	VSUBPD Z5, Z7, Z16
+	VSUBPD Z6, Z8, Z17
+	VSUBPD Z7, Z9, Z18
+	VSUBPD Z8, Z10, Z19
+	VMULPD Z26, Z16, Z16
+	VMULPD Z26, Z17, Z17
+	VMULPD Z26, Z18, Z18
+	VMULPD Z26, Z19, Z19
+	DIFF4(Z27, Z8, Z9, Z10, Z11, Z4, Z5, Z6, Z7)
+	DIFF4(Z28, Z9, Z10, Z11, Z12, Z3, Z4, Z5, Z6)
+	DIFF4(Z29, Z10, Z11, Z12, Z13, Z2, Z3, Z4, Z5)
+	DIFF4(Z30, Z11, Z12, Z13, Z14, Z1, Z2, Z3, Z4)
+	DIFF4(Z31, Z12, Z13, Z14, Z15, Z0, Z1, Z2, Z3)
+	REST(Z16, Z6, 96, 104)
+	REST(Z17, Z7, 208, 216)
+	REST(Z18, Z8, 320, 328)
+	REST(Z19, Z9, 432, 440)
 
-	VMOVUPD (SI), Z14
-	VMOVUPD 64(SI), Z15
-	VMULPD  (DX), Z14, Z22
-	VMULPD  64(DX), Z15, Z23
-	VMOVUPD     -384(SI), Z16
-	VMULPD.BCST (R9), Z16, Z17
-	VADDPD      Z17, Z22, Z22
-	PSI2(-320, 8, 112)
-	PSI2(-256, 16, 120)
-	PSI2(-192, 24, 128)
-	PSI2(-128, 32, 136)
-	PSI2(-64, 40, 144)
-	VMULPD.BCST 152(R9), Z14, Z18 // the first row's centre is in diag
-	VADDPD      Z18, Z23, Z23
-	VMULPD.BCST 48(R9), Z15, Z17 // the second row's centre is in diag
-	VADDPD      Z17, Z22, Z22
-	PSI2(128, 56, 160)
-	PSI2(192, 64, 168)
-	PSI2(256, 72, 176)
-	PSI2(320, 80, 184)
-	PSI2(384, 88, 192)
-	VMOVUPD     448(SI), Z16
-	VMULPD.BCST 200(R9), Z16, Z18
-	VADDPD      Z18, Z23, Z23
+	// The centres, whose weights are in diag; then column by column.
+	VMOVUPD (SI), Z0
+	VMOVUPD 64(SI), Z1
+	VMOVUPD 128(SI), Z2
+	VMOVUPD 192(SI), Z3
+	VMULPD (DX), Z0, Z20
+	VMULPD 64(DX), Z1, Z21
+	VMULPD 128(DX), Z2, Z22
+	VMULPD 192(DX), Z3, Z23
+	VMOVUPD -384(SI), Z4
+	ROW(Z4, 0, Z20)
+	VMOVUPD -320(SI), Z4
+	ROW(Z4, 8, Z20)
+	ROW(Z4, 112, Z21)
+	VMOVUPD -256(SI), Z4
+	ROW(Z4, 16, Z20)
+	ROW(Z4, 120, Z21)
+	ROW(Z4, 224, Z22)
+	VMOVUPD -192(SI), Z4
+	ROW(Z4, 24, Z20)
+	ROW(Z4, 128, Z21)
+	ROW(Z4, 232, Z22)
+	ROW(Z4, 336, Z23)
+	VMOVUPD -128(SI), Z4
+	ROW(Z4, 32, Z20)
+	ROW(Z4, 136, Z21)
+	ROW(Z4, 240, Z22)
+	ROW(Z4, 344, Z23)
+	VMOVUPD -64(SI), Z4
+	ROW(Z4, 40, Z20)
+	ROW(Z4, 144, Z21)
+	ROW(Z4, 248, Z22)
+	ROW(Z4, 352, Z23)
+	ROW(Z0, 152, Z21)
+	ROW(Z0, 256, Z22)
+	ROW(Z0, 360, Z23)
+	ROW(Z1, 48, Z20)
+	ROW(Z1, 264, Z22)
+	ROW(Z1, 368, Z23)
+	ROW(Z2, 56, Z20)
+	ROW(Z2, 160, Z21)
+	ROW(Z2, 376, Z23)
+	ROW(Z3, 64, Z20)
+	ROW(Z3, 168, Z21)
+	ROW(Z3, 272, Z22)
+	VMOVUPD 256(SI), Z4
+	ROW(Z4, 72, Z20)
+	ROW(Z4, 176, Z21)
+	ROW(Z4, 280, Z22)
+	ROW(Z4, 384, Z23)
+	VMOVUPD 320(SI), Z4
+	ROW(Z4, 80, Z20)
+	ROW(Z4, 184, Z21)
+	ROW(Z4, 288, Z22)
+	ROW(Z4, 392, Z23)
+	VMOVUPD 384(SI), Z4
+	ROW(Z4, 88, Z20)
+	ROW(Z4, 192, Z21)
+	ROW(Z4, 296, Z22)
+	ROW(Z4, 400, Z23)
+	VMOVUPD 448(SI), Z4
+	ROW(Z4, 200, Z21)
+	ROW(Z4, 304, Z22)
+	ROW(Z4, 408, Z23)
+	VMOVUPD 512(SI), Z4
+	ROW(Z4, 312, Z22)
+	ROW(Z4, 416, Z23)
+	VMOVUPD 576(SI), Z4
+	ROW(Z4, 424, Z23)
 
-	VADDPD  Z24, Z22, Z22
-	VADDPD  Z25, Z23, Z23
-	VMOVUPD Z22, (DI)
-	VMOVUPD Z23, 64(DI)
-	ADDQ    $128, SI
-	ADDQ    $128, R8
-	ADDQ    $128, DX
-	ADDQ    $128, DI
-	ADDQ    $224, R9
-	SUBQ    $2, CX
-	JGE     rows512two
+	VADDPD Z16, Z20, Z20
+	VADDPD Z17, Z21, Z21
+	VADDPD Z18, Z22, Z22
+	VADDPD Z19, Z23, Z23
+	VMOVUPD Z20, (DI)
+	VMOVUPD Z21, 64(DI)
+	VMOVUPD Z22, 128(DI)
+	VMOVUPD Z23, 192(DI)
+	ADDQ $256, SI
+	ADDQ $256, R8
+	ADDQ $256, DX
+	ADDQ $256, DI
+	ADDQ $448, R9
+	SUBQ $4, CX
+	JGE  rows512four
 
 rows512last:
-	ADDQ $2, CX
+	ADDQ $4, CX
 	JEQ  rows512done
+
+rows512one:
 	VMOVUPD 64(R8), Z24
 	VSUBPD  -64(R8), Z24, Z24
 	VMULPD  Z26, Z24, Z24
@@ -285,6 +348,13 @@ rows512last:
 	PSI1(384, 88)
 	VADDPD  Z24, Z22, Z22
 	VMOVUPD Z22, (DI)
+	ADDQ    $64, SI
+	ADDQ    $64, R8
+	ADDQ    $64, DX
+	ADDQ    $64, DI
+	ADDQ    $112, R9
+	DECQ    CX
+	JNE     rows512one
 
 rows512done:
 	VZEROUPPER
