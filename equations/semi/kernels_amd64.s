@@ -464,6 +464,68 @@ TEXT ·rowsAnyAVX512(SB), NOSPLIT, $0-72
 	MOVQ slide+56(FP), R11
 	MOVQ n+64(FP), CX
 	SHLQ  $6, R11
+	JNE   any512rows
+	TESTQ R10, R10
+	JLE   any512rows
+
+	// The rows have their columns in common: three at a time share the loads.
+	MOVQ R10, R11
+	SHLQ $4, R11 // bytes between the weights of two rows
+	SUBQ $3, CX
+	JLT  any512fewer
+
+any512three:
+	VMOVUPD (BX), Z0
+	VMOVUPD 64(BX), Z2
+	VMOVUPD 128(BX), Z4
+	VMULPD  (DX), Z0, Z0
+	VMULPD  64(DX), Z2, Z2
+	VMULPD  128(DX), Z4, Z4
+	VPXORQ  Z1, Z1, Z1
+	VPXORQ  Z3, Z3, Z3
+	VPXORQ  Z5, Z5, Z5
+	MOVQ    SI, R12
+	MOVQ    R8, R13
+	MOVQ    R10, AX
+
+any512threeColumn:
+	VMOVUPD     (R12), Z6
+	VMOVUPD     (R13), Z7
+	VMULPD.BCST (R9), Z6, Z8
+	VMULPD.BCST 8(R9), Z7, Z9
+	VMULPD.BCST (R9)(R11*1), Z6, Z10
+	VMULPD.BCST 8(R9)(R11*1), Z7, Z11
+	VMULPD.BCST (R9)(R11*2), Z6, Z12
+	VMULPD.BCST 8(R9)(R11*2), Z7, Z13
+	VADDPD      Z8, Z0, Z0
+	VADDPD      Z9, Z1, Z1
+	VADDPD      Z10, Z2, Z2
+	VADDPD      Z11, Z3, Z3
+	VADDPD      Z12, Z4, Z4
+	VADDPD      Z13, Z5, Z5
+	ADDQ        $64, R12
+	ADDQ        $64, R13
+	ADDQ        $16, R9
+	DECQ        AX
+	JNE         any512threeColumn
+	VADDPD      Z1, Z0, Z0
+	VADDPD      Z3, Z2, Z2
+	VADDPD      Z5, Z4, Z4
+	VMOVUPD     Z0, (DI)
+	VMOVUPD     Z2, 64(DI)
+	VMOVUPD     Z4, 128(DI)
+	LEAQ        (R9)(R11*2), R9
+	ADDQ        $192, BX
+	ADDQ        $192, DX
+	ADDQ        $192, DI
+	SUBQ        $3, CX
+	JGE         any512three
+
+any512fewer:
+	ADDQ $3, CX
+	XORQ R11, R11
+
+any512rows:
 	TESTQ CX, CX
 	JLE   any512done
 
