@@ -245,6 +245,27 @@ func TestApplyIsTheOperator(t *testing.T) {
 	}
 }
 
+// TestAccelerateWithASumGoesPieceByPiece: with a sum the rows are done in
+// pieces; the result must have the bits of Apply, and the sum those of one sweep.
+func TestAccelerateWithASumGoesPieceByPiece(t *testing.T) {
+	for order := 2; order <= stencil.MaxOrder; order += 2 {
+		m := block(t, 307, order)
+		u := wave(m)
+		n := len(u) / 2
+		applied := make([]float64, 2*n)
+		m.Apply(applied, u)
+		got, want := march.Sum{XX: 1, XY: .3, YX: -.7, YY: 2}, march.Sum{XX: 1, XY: .3, YX: -.7, YY: 2}
+		got.X, got.Y = make([]float64, n), make([]float64, n)
+		want.X, want.Y = make([]float64, n), make([]float64, n)
+		dst := make([]float64, n)
+		m.Accelerate(dst, u[:n], u[n:], &got)
+		want.Add(u[:n], u[n:], 0, n)
+		sameBits(t, fmt.Sprintf("order %d", order), dst, applied[n:])
+		sameBits(t, fmt.Sprintf("order %d, sum of X", order), got.X, want.X)
+		sameBits(t, fmt.Sprintf("order %d, sum of Y", order), got.Y, want.Y)
+	}
+}
+
 // TestRunsAreTheSameInEveryForm takes whole steps of every stepper, for orders
 // with and without unrolled kernels.
 func TestRunsAreTheSameInEveryForm(t *testing.T) {

@@ -118,7 +118,7 @@ func TestPlainKernelsDoWhatTheySay(t *testing.T) {
 	sameBits(t, "pair y", b, []float64{3100, 4201})
 }
 
-// chain is x_i'' = x_{i+1} - 2 x_i + x_{i-1} - x_i'/8 + i sin t on a ring, as a
+// chain is x_i” = x_{i+1} - 2 x_i + x_{i-1} - x_i'/8 + i sin t on a ring, as a
 // second-order system; asLinear hides that.
 type chain struct{ n int }
 
@@ -184,6 +184,41 @@ func TestTaylorOfSecondOrderIsTheSameSeries(t *testing.T) {
 			// Values grow to a few hundred in 20 steps; 1e-12 is some 10 roundings.
 			if d := math.Abs(u[i] - v[i]); !(d <= 1e-12*(1+math.Abs(v[i]))) {
 				t.Errorf("order %d: index %d: %v and %v", order, i, u[i], v[i])
+			}
+		}
+	}
+}
+
+// TestRungeKuttaSumsAsItsTableauSays repeats a step with plain sums.
+func TestRungeKuttaSumsAsItsTableauSays(t *testing.T) {
+	const at, dt = .4, .3
+	c := chain{n: 21}
+	for _, tab := range []*Tableau{RK4(), RK8()} {
+		u := make([]float64, 2*c.n)
+		for i := range u {
+			u[i] = math.Cos(float64(i * i))
+		}
+		var k [][]float64
+		add := func(a []float64) []float64 {
+			y := append([]float64(nil), u...)
+			for j, v := range a {
+				for i := range y {
+					y[i] += float64(v*dt) * k[j][i]
+				}
+			}
+			return y
+		}
+		for i := range tab.B {
+			k = append(k, make([]float64, len(u)))
+			c.RHS(k[i], add(tab.A[i]), at+tab.C[i]*dt)
+		}
+		want := add(tab.B)
+		NewRungeKutta(c, tab, len(u)).Step(u, at, dt)
+		for i := range u {
+			// A zero weight or a fused product may round otherwise: values of
+			// order 10, so four roundings.
+			if d := math.Abs(u[i] - want[i]); !(d <= 1e-14) {
+				t.Errorf("%s: index %d: %v, want %v", tab.Name, i, u[i], want[i])
 			}
 		}
 	}
