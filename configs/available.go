@@ -6,7 +6,7 @@ package configs
 // written as "key value", whole sections and keys by their path.
 var features = map[string]bool{
 	"orbit.kind " + Circular:      true,
-	"orbit.kind " + Eccentric:     false,
+	"orbit.kind " + Eccentric:     true,
 	"orbit.kind " + Infall:        false,
 	"orbit.kind " + Scatter:       false,
 	"orbit.kind " + Inspiral:      false,
