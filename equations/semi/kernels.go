@@ -120,7 +120,7 @@ func rowsAny(out, psi, pi, diag, w []float64, width, first, slide, lo, hi int) {
 type instructions uint8
 
 const (
-	plain  instructions = iota // the Go kernels above
+	goCode instructions = iota // the Go kernels above
 	avx2                       // half a point a register
 	avx512                     // a point a register
 )

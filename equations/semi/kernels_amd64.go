@@ -10,7 +10,7 @@ func fastest() instructions {
 	case cpu.X86.HasAVX2:
 		return avx2
 	}
-	return plain
+	return goCode
 }
 
 // The vector kernels check nothing: the methods below do, and hand them pointers
@@ -41,7 +41,7 @@ func rowsAnyAVX512(out, here, psi, pi, diag, w *float64, width, slide, n int)
 func rowsAnyAVX2(out, here, psi, pi, diag, w *float64, width, slide, n int)
 
 func (s instructions) flat12(out, psi, diag []float64, d2 *[7]float64, lo, hi int) {
-	if s == plain || lo >= hi {
+	if s == goCode || lo >= hi {
 		flat12(out, psi, diag, d2, lo, hi)
 		return
 	}
@@ -55,7 +55,7 @@ func (s instructions) flat12(out, psi, diag []float64, d2 *[7]float64, lo, hi in
 }
 
 func (s instructions) flatAny(out, psi, diag, d2 []float64, lo, hi int) {
-	if s == plain || lo >= hi {
+	if s == goCode || lo >= hi {
 		flatAny(out, psi, diag, d2, lo, hi)
 		return
 	}
@@ -69,7 +69,7 @@ func (s instructions) flatAny(out, psi, diag, d2 []float64, lo, hi int) {
 }
 
 func (s instructions) rows13(out, psi, pi, diag, w []float64, d1 *[6]float64, lo, hi int) {
-	if s == plain || lo >= hi {
+	if s == goCode || lo >= hi {
 		rows13(out, psi, pi, diag, w, d1, lo, hi)
 		return
 	}
@@ -84,7 +84,7 @@ func (s instructions) rows13(out, psi, pi, diag, w []float64, d1 *[6]float64, lo
 }
 
 func (s instructions) rowsAny(out, psi, pi, diag, w []float64, width, first, slide, lo, hi int) {
-	if s == plain || lo >= hi || width == 0 {
+	if s == goCode || lo >= hi || width == 0 {
 		rowsAny(out, psi, pi, diag, w, width, first, slide, lo, hi)
 		return
 	}

@@ -34,7 +34,7 @@ func BenchmarkRows(b *testing.B) {
 	}
 }
 
-func BenchmarkApply(b *testing.B) {
+func BenchmarkWholeApply(b *testing.B) {
 	for _, order := range []int{8, 12} {
 		m := block(b, 201, order)
 		u := wave(m)

@@ -15,8 +15,8 @@ import (
 
 // forms lists the kernels that this processor can run, the plain ones first.
 func forms() []instructions {
-	all := []instructions{plain}
-	for s := plain + 1; s <= fastest(); s++ {
+	all := []instructions{goCode}
+	for s := goCode + 1; s <= fastest(); s++ {
 		all = append(all, s)
 	}
 	return all
@@ -84,7 +84,7 @@ func compareForms(t testing.TB, seed uint64, at, count, reach, width int, specia
 	}
 	for _, k := range kernels {
 		want := append([]float64(nil), out...)
-		k.run(plain, want)
+		k.run(goCode, want)
 		for _, s := range forms()[1:] {
 			got := append([]float64(nil), out...)
 			k.run(s, got)
@@ -282,7 +282,7 @@ func TestRunsAreTheSameInEveryForm(t *testing.T) {
 			"Taylor":      march.NewTaylor(m, 8, m.Length()),
 			"Runge-Kutta": march.NewRungeKutta(m, march.RK8(), m.Length()),
 		} {
-			force(t, plain)
+			force(t, goCode)
 			want := run(s)
 			for _, f := range forms()[1:] {
 				force(t, f)

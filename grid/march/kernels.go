@@ -49,7 +49,7 @@ func axpy(y, x []float64, a float64) {
 type instructions uint8
 
 const (
-	plain  instructions = iota // the Go kernels above
+	goCode instructions = iota // the Go kernels above
 	avx2                       // registers of four numbers
 	avx512                     // registers of eight numbers
 )

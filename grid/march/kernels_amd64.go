@@ -10,7 +10,7 @@ func fastest() instructions {
 	case cpu.X86.HasAVX2:
 		return avx2
 	}
-	return plain
+	return goCode
 }
 
 // unit is what the vector kernels' lengths are multiples of; the plain kernels
@@ -40,7 +40,7 @@ func pairAVX2(x, y, p, q *float64, c *[4]float64, n int)
 func (s instructions) accumulate(u, w []float64, c float64) {
 	n := len(w) / unit * unit
 	u = u[:len(w)]
-	if s == plain || n == 0 {
+	if s == goCode || n == 0 {
 		accumulate(u, w, c)
 		return
 	}
@@ -54,7 +54,7 @@ func (s instructions) accumulate(u, w []float64, c float64) {
 
 func (s instructions) combine(y, u []float64, k [][]float64, c []float64) {
 	n := len(y) / unit * unit
-	if s == plain || n == 0 || len(k) == 0 {
+	if s == goCode || n == 0 || len(k) == 0 {
 		combine(y, u, k, c)
 		return
 	}
@@ -79,7 +79,7 @@ func (s instructions) combine(y, u []float64, k [][]float64, c []float64) {
 func (s instructions) pair(x, y, p, q []float64, c *[4]float64) {
 	n := len(x) / unit * unit
 	y, p, q = y[:len(x)], p[:len(x)], q[:len(x)]
-	if s == plain || n == 0 {
+	if s == goCode || n == 0 {
 		pair(x, y, p, q, c)
 		return
 	}

@@ -9,8 +9,8 @@ import (
 
 // forms lists the kernels that this processor can run, the plain ones first.
 func forms() []instructions {
-	all := []instructions{plain}
-	for s := plain + 1; s <= fastest(); s++ {
+	all := []instructions{goCode}
+	for s := goCode + 1; s <= fastest(); s++ {
 		all = append(all, s)
 	}
 	return all
@@ -74,7 +74,7 @@ func compareForms(t testing.TB, seed uint64, n, terms int, special bool) {
 		s.pair(o.px[:n], o.py[:n], p[:n], q[:n], (*[4]float64)(c[terms:]))
 		return o
 	}
-	want := run(plain)
+	want := run(goCode)
 	for _, s := range forms()[1:] {
 		got := run(s)
 		name := fmt.Sprintf("form %d, length %d, %d terms", s, n, terms)
@@ -261,7 +261,7 @@ func TestStepsAreTheSameInEveryForm(t *testing.T) {
 		"general":     func() Stepper { return NewTaylor(asLinear{c}, 8, 2*c.n) },
 		"Runge-Kutta": func() Stepper { return NewRungeKutta(c, RK8(), 2*c.n) },
 	} {
-		force(t, plain)
+		force(t, goCode)
 		want := run(s)
 		for _, f := range forms()[1:] {
 			force(t, f)
