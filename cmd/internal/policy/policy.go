@@ -64,7 +64,7 @@ func Rules() []Rule {
 		{Package: "equations/evolve", Inside: []string{"grid/march"}, Outside: []string{linearAlgebra}},
 
 		// The particle: its path knows no grid, its smoothed delta no evolution.
-		{Package: "source", Inside: []string{"source/worldline", "grid", "hyperboloidal", "equations"}, Outside: []string{linearAlgebra}},
+		{Package: "source", Inside: []string{"source/worldline", "grid", "grid/stencil", "hyperboloidal", "equations"}, Outside: []string{linearAlgebra}},
 		{Package: "source/worldline", Inside: []string{"hyperboloidal"}, Outside: []string{linearAlgebra}},
 
 		// From samples to certified numbers; knows nothing of how they evolved.
