@@ -303,7 +303,7 @@ func TestCheck(t *testing.T) {
 	}
 	for _, change := range []func(*hyperboloidal.Layers){
 		func(s *hyperboloidal.Layers) { s.Alpha = -1e-9 },
-		func(s *hyperboloidal.Layers) { s.Alpha = 0.1 },
+		func(s *hyperboloidal.Layers) { s.Alpha = 1.001 * greatest(s.Si) },
 		func(s *hyperboloidal.Layers) { s.Alpha = math.NaN() },
 		func(s *hyperboloidal.Layers) { s.Si = 0 },
 		func(s *hyperboloidal.Layers) { s.Ri = 26 },
