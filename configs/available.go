@@ -6,7 +6,7 @@ package configs
 // written as "key value", whole sections and keys by their path.
 var features = map[string]bool{
 	"orbit.kind " + Circular:      true,
-	"orbit.kind " + Eccentric:     false,
+	"orbit.kind " + Eccentric:     true,
 	"orbit.kind " + Infall:        false,
 	"orbit.kind " + Scatter:       false,
 	"orbit.kind " + Inspiral:      false,
@@ -14,7 +14,7 @@ var features = map[string]bool{
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,
 	"pulse":                       false,
-	"model":                       false,
+	"model":                       true,
 }
 
 // lacks reports whether the feature is known and switched off.
