@@ -139,6 +139,17 @@ func sumModes(c *configs.Case, res *result.Result, measure string) {
 		l, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value }), margin)
 		return &result.Flux{Energy: e, AngularMomentum: l}, ok1 && ok2
 	}
+	if total.Horizon == nil {
+		// Nothing is absorbed that could be told apart from the particle itself.
+		inf, ok := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
+		if !ok {
+			t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
+			return
+		}
+		t.Infinity = inf
+		total.Infinity = flux.Sum(total.Infinity, inf)
+		return
+	}
 	inf1, ok1 := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
 	hor1, ok2 := tail(func(m *result.Mode) *result.Flux { return m.Horizon }, 0.02)
 	if !ok1 || !ok2 {
@@ -158,6 +169,9 @@ func verdict(c *configs.Case, res *result.Result) {
 	ends := func(m *result.Mode) [2]*result.Flux { return [2]*result.Flux{m.Infinity, m.Horizon} }
 	for i := range res.Modes {
 		for e, f := range ends(&res.Modes[i]) {
+			if f == nil {
+				continue
+			}
 			largest[e] = math.Max(largest[e], f.Energy.Value)
 		}
 	}
@@ -168,6 +182,9 @@ func verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
+			if f == nil {
+				continue
+			}
 			scale := f.Energy.Value
 			if scale < c.Accuracy.Floor*largest[e] {
 				// Below the floor the bar is held to floor times the largest,

@@ -8,12 +8,10 @@ import (
 	"strings"
 
 	"nullmark/configs"
-	"nullmark/equations"
 	"nullmark/equations/semi"
 	"nullmark/extract/certify"
 	"nullmark/extract/flux"
 	"nullmark/extract/result"
-	"nullmark/extract/strain"
 	"nullmark/grid"
 	"nullmark/hyperboloidal"
 	"nullmark/source"
@@ -405,8 +403,12 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	sumModes(c, res, rate)
 	verdict(c, res)
-	res2 := r.movingSeries(c, r.path, junk)
-	return &result.Bundle{Result: res, Series: res2}, nil
+	_, dphi := r.path.Uncertainty()
+	s := r.seriesOf(c, r.path, junk, dphi)
+	if s != nil {
+		s.JunkUntil = quietFrom(s)
+	}
+	return &result.Bundle{Result: res, Series: s}, nil
 }
 
 func (r *boundRun) entry(m *ladder, rung int) result.Mode {
@@ -456,65 +458,6 @@ func describePath(w worldline.Worldline) *result.Orbit {
 		}
 	}
 	return o
-}
-
-// movingSeries samples the strain and the horizon field with a bar per sample:
-// what the two finest rungs leave open, what the start-up has left, round-off.
-func (r *climb) movingSeries(c *configs.Case, path worldline.Worldline, junk map[*ladder]junkSeries) *result.Series {
-	if len(r.modes) == 0 {
-		return nil
-	}
-	until := math.Inf(1)
-	for _, m := range r.modes {
-		until = math.Min(until, m.until)
-	}
-	d := r.n.domain
-	s := &result.Series{Prefix: "h", HorizonPrefix: "psi"}
-	s.U = ladderOfTimes(c.Output.Every, 0, d.Retarded(until))
-	s.V = ladderOfTimes(c.Output.Every, math.Ceil(d.Advanced(0)), d.Advanced(until))
-	t0, t1 := path.Span()
-	var st worldline.State
-	for _, t := range s.U {
-		if t >= t0 && t <= t1 {
-			path.At(t, &st)
-			s.T, s.R, s.Phi = append(s.T, t), append(s.R, st.R), append(s.Phi, st.Phi)
-		}
-	}
-	_, dphi := path.Uncertainty()
-	for _, m := range r.modes {
-		fine, mid := m.runs[m.rung], m.runs[m.rung-1]
-		fac := strain.Factor(m.l, m.parity == equations.Odd)
-		out := result.ModeSeries{L: m.l, M: m.m}
-		scaled := func(x []complex128) []complex128 {
-			for i := range x {
-				x[i] *= fac
-			}
-			return x
-		}
-		left := certify.Leftover(min(r.n.order, r.n.moments))
-		round := certify.RoundOff(m.points[m.rung], 1)
-		series := func(e certify.End, start float64, at []float64, scale func([]complex128) []complex128, size float64) (w []complex128, bar, diff []float64) {
-			w = scale(strain.Resample(fine.Psi[e], start, fine.Dt, at))
-			o := scale(strain.Resample(mid.Psi[e], start, mid.Dt, at))
-			peak := 0.0
-			diff = make([]float64, len(w))
-			for i := range w {
-				diff[i] = cmplx.Abs(w[i] - o[i])
-				peak = math.Max(peak, cmplx.Abs(w[i]))
-			}
-			near := runningMax(diff, int(math.Ceil(12/c.Output.Every)))
-			bar = make([]float64, len(w))
-			for i := range w {
-				bar[i] = left*near[i] + size*junk[m].at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
-			}
-			return w, bar, diff
-		}
-		out.Wave, out.WaveErr, out.Evidence = series(certify.Infinity, d.Retarded(0), s.U, scaled, cmplx.Abs(fac))
-		out.Horizon, out.HorizonErr, _ = series(certify.Horizon, d.Advanced(0), s.V, func(x []complex128) []complex128 { return x }, 1)
-		s.Modes = append(s.Modes, out)
-	}
-	s.JunkUntil = quietFrom(s)
-	return s
 }
 
 // runningMax is the largest value within reach of each sample.

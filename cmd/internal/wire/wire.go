@@ -7,6 +7,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"slices"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -57,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
@@ -123,6 +124,8 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return runBound(ctx, c, choose(c), o)
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return runBurst(ctx, c, choose(c), o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
