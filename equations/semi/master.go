@@ -215,8 +215,8 @@ func (m *Master) Geometry() *Geometry { return m.geo }
 // the second difference (speed 1 everywhere) plus the largest K V/L of its lanes.
 func (m *Master) SpectralRadius() float64 {
 	v := 0.0
-	for _, p := range m.pot {
-		v = max(v, -p)
+	for i, d := range m.diag {
+		v = max(v, m.geo.centre[i/grid.Lanes]-d)
 	}
 	return math.Hypot(m.geo.SpectralRadius(), math.Sqrt(v))
 }

@@ -116,6 +116,104 @@ func TestTaylorExactness(t *testing.T) {
 	}
 }
 
+// swing is x” = B x + C x' + s(t) in two blocks, with s such that
+// x_i = (i+1) (1 + t^degree).
+type swing struct {
+	degree int
+	t      float64
+}
+
+func (w *swing) x(i, j int, t float64) float64 { // j-th derivative
+	v := 0.0
+	if j <= w.degree {
+		v = falling(w.degree, j) * math.Pow(t, float64(w.degree-j))
+	}
+	if j == 0 {
+		v++
+	}
+	return v * float64(i+1)
+}
+
+// rates are row i of B and C.
+func (w *swing) rates(i int) (b, c [2]float64) {
+	return [2][2]float64{{-1.1, 0.3}, {0.2, -0.7}}[i], [2][2]float64{{-0.2, 0.5}, {-0.4, 0.1}}[i]
+}
+
+func (w *swing) Accelerate(dst, x, y []float64, sum *Sum) {
+	for i := range dst {
+		b, c := w.rates(i)
+		dst[i] = b[0]*x[0] + b[1]*x[1] + c[0]*y[0] + c[1]*y[1]
+	}
+	if sum != nil {
+		sum.Add(x, y, 0, 2)
+	}
+}
+
+func (w *swing) Apply(dst, u []float64) {
+	copy(dst[:2], u[2:])
+	w.Accelerate(dst[2:], u[:2], u[2:], nil)
+}
+
+func (w *swing) RHS(dst, u []float64, t float64) {
+	w.Apply(dst, u)
+	w.t = t
+	w.AddAcceleration(dst[2:], 0, 1)
+}
+
+func (w *swing) Prepare(t, _ float64) { w.t = t }
+
+func (w *swing) AddForce(dst []float64, j int, scale float64) {
+	w.AddAcceleration(dst[2:], j, scale)
+}
+
+func (w *swing) AddAcceleration(dst []float64, j int, scale float64) {
+	for i := range dst {
+		b, c := w.rates(i)
+		s := w.x(i, j+2, w.t)
+		for k := range b {
+			s -= b[k]*w.x(k, j, w.t) + c[k]*w.x(k, j+1, w.t)
+		}
+		dst[i] += scale * s
+	}
+}
+
+var _ SecondOrder = (*swing)(nil)
+
+// TestTaylorExactnessOfSecondOrder is the same for the form in blocks: x and x'
+// are exact while x has degree n; at n+1 x misses dt^{n+1} and x', of degree n,
+// nothing; at n+2 x' misses (n+2) dt^{n+1} ((n+1)! and t taken out).
+func TestTaylorExactnessOfSecondOrder(t *testing.T) {
+	const t0, dt = 0, 0.7
+	for order := 1; order <= 12; order++ {
+		for degree := 1; degree <= order+2; degree++ {
+			sys := &swing{degree: degree}
+			s := NewTaylor(sys, order, 4)
+			if s.second == nil {
+				t.Fatal("the form in blocks is not in use")
+			}
+			u := make([]float64, 4)
+			for i := range 2 {
+				u[i], u[2+i] = sys.x(i, 0, t0), sys.x(i, 1, t0)
+			}
+			s.Step(u, t0, dt)
+			missX, missY := 0.0, 0.0
+			switch degree {
+			case order + 1:
+				missX = math.Pow(dt, float64(order+1))
+			case order + 2:
+				missX = math.Pow(dt, float64(order+2))
+				missY = float64(order+2) * math.Pow(dt, float64(order+1))
+			}
+			for i := range 2 {
+				x, y := (sys.x(i, 0, t0+dt)-u[i])/float64(i+1), (sys.x(i, 1, t0+dt)-u[2+i])/float64(i+1)
+				if math.Abs(x-missX) > 1e-14 || math.Abs(y-missY) > 1e-14 {
+					t.Errorf("order %d on degree %d: misses %.3g and %.3g, want %.3g and %.3g", order, degree, x, y, missX, missY)
+				}
+			}
+		}
+	}
+}
+
 // rotator is u” = -u + cos(w t) in first order; forced, its solution from rest
 // is (cos w t - cos t)/(1-w^2).
 func rotator(w float64, forced bool) (*dense, func(t float64) []float64) {
