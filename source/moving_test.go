@@ -112,6 +112,31 @@ func TestMovingOnACircle(t *testing.T) {
 	}
 }
 
+// TestMovingIsItsFormula on a path that moves in and out, lane by lane.
+func TestMovingIsItsFormula(t *testing.T) {
+	where, rho := everywhere()
+	k, ramp := NewKernel(1.1, 12), Ramp{Centre: 20, Width: 17}
+	move := NewMoving(swing{3}, k, ramp, modes(), where, 0.5)
+	for _, at := range []float64{13.2, 40.7, 61} {
+		var s worldline.State
+		swing{3}.At(at, &s)
+		on := (1 + math.Erf((at-20)/17)) / 2
+		dst := make([]float64, movingPoints*grid.Lanes)
+		move.Add(dst, at)
+		for q, m := range modes() {
+			f, g := m.At(&Motion{R: s.R, Y: s.Y, P: s.P, Phi: 0.03 * at, E: s.E, L: s.L})
+			for i, x := range rho {
+				d, d1 := k.At(x - s.Rstar)
+				want := complex(-on*d, 0)*g + complex(-on*d1, 0)*f
+				got := complex(dst[i*grid.Lanes+2*q], dst[i*grid.Lanes+2*q+1])
+				if e := got - want; math.Hypot(real(e), imag(e)) > 1e-14 {
+					t.Errorf("(%d,%d) at t = %g, r_* = %g: %v, want %v", m.L, m.M, at, x, got, want)
+				}
+			}
+		}
+	}
+}
+
 // TestMovingConverges: on a path that moves, the Taylor sum of a step, sum
 // (theta dt)^j/j! s^(j), reproduces the forcing inside the step with the order
 // of a degree-8 interpolation.
