@@ -7,9 +7,9 @@ package configs
 var features = map[string]bool{
 	"orbit.kind " + Circular:      true,
 	"orbit.kind " + Eccentric:     true,
-	"orbit.kind " + Infall:        false,
-	"orbit.kind " + Scatter:       false,
-	"orbit.kind " + Inspiral:      false,
+	"orbit.kind " + Infall:        true,
+	"orbit.kind " + Scatter:       true,
+	"orbit.kind " + Inspiral:      true,
 	"orbit.kind " + Table:         false,
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,

@@ -32,6 +32,7 @@ type burstRun struct {
 	asked   float64
 	falls   bool    // reaches the horizon
 	ends    float64 // slice time at which the evolution ends
+	event   float64 // when the orbit does what it is run for
 	after   float64 // retarded time from which numbers count
 	starts  map[*ladder]junkSeries
 	largest float64 // radiated energy of the strongest mode, per both signs
@@ -65,12 +66,22 @@ func horizonTime(w worldline.Worldline) float64 {
 	return math.Inf(1)
 }
 
-// burstRamp fits the switch-on into a fall that is shorter than the usual ramp.
-func burstRamp(ramp source.Ramp, fall float64) source.Ramp {
-	if c := fall / 4; c < ramp.Centre {
-		return source.Ramp{Centre: c, Width: c / 4.7}
+// burstRamp fits the switch-on into the time before the event (the fall into the
+// horizon, the periastron): the softer it is, the less it excites, and the
+// residue of the start-up is what limits a transient.
+func burstRamp(event float64) source.Ramp {
+	c := math.Min(0.35*event, 400)
+	return source.Ramp{Centre: c, Width: c / 4.7}
+}
+
+// eventTime is when a transient orbit does what it is run for.
+func eventTime(w worldline.Worldline) float64 {
+	for _, m := range w.Markers() {
+		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron {
+			return m.T
+		}
 	}
-	return ramp
+	return horizonTime(w) - 30
 }
 
 func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
@@ -83,7 +94,8 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
-	r.n.ramp = burstRamp(r.n.ramp, th)
+	r.event = eventTime(w)
+	r.n.ramp = burstRamp(r.event)
 	r.n.filter, r.n.filterStrength = 16, 0.5
 	r.n.courant = math.Min(r.n.courant, 1.1)
 	r.n.outer = math.Max(r.n.outer, 30)
@@ -159,7 +171,10 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	for _, m := range r.modes {
 		m.until = 0
 	}
-	r.after = r.n.ramp.Centre + 2.5*r.n.ramp.Width + 20
+	// The start-up is over when the ramp is, or later when its residue is still
+	// falling and there is time before the event to wait for it.
+	r.after = math.Min(r.n.ramp.Centre+3*r.n.ramp.Width, r.event-40)
+	r.after = math.Max(r.after, r.event-120)
 	all := r.modes
 	r.modes = leading(all)
 	if err := r.run(ctx); err != nil {
