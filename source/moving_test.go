@@ -11,12 +11,12 @@ import (
 
 var _ semi.Forcing = (*Moving)(nil)
 
-// ring is a circular orbit and swing one that moves in r_* by a given amplitude
+// circlePath is a circular orbit and swingPath one that moves in r_* by a given amplitude
 // with the slope of r_* as its velocity (a path, not a geodesic: the forcing
 // only asks for states).
-type ring struct{ motion Motion }
+type circlePath struct{ motion Motion }
 
-func (r ring) At(t float64, s *worldline.State) {
+func (r circlePath) At(t float64, s *worldline.State) {
 	w := r.motion
 	omega := w.Y / w.R * w.L / (w.R * w.R * w.E)
 	*s = worldline.State{
@@ -25,9 +25,9 @@ func (r ring) At(t float64, s *worldline.State) {
 	}
 }
 
-type swing struct{ amplitude float64 }
+type swingPath struct{ amplitude float64 }
 
-func (w swing) At(t float64, s *worldline.State) {
+func (w swingPath) At(t float64, s *worldline.State) {
 	y := 8 + w.amplitude*math.Sin(t/15)
 	r := y + 2
 	p := w.amplitude / 15 * math.Cos(t/15)
@@ -77,7 +77,7 @@ func TestMovingOnACircle(t *testing.T) {
 	}
 	still := NewStationary(rho, 10+2*math.Log(4), k, ramp, f, g, om)
 	const dt = 0.5
-	move := NewMoving(ring{*w}, k, ramp, modes(), where, dt)
+	move := NewMoving(circlePath{*w}, k, ramp, modes(), where, dt)
 	for _, step := range []int{100, 170, 1000} {
 		at := float64(step) * dt
 		a, b := make([]float64, movingPoints*grid.Lanes), make([]float64, movingPoints*grid.Lanes)
@@ -116,10 +116,10 @@ func TestMovingOnACircle(t *testing.T) {
 func TestMovingIsItsFormula(t *testing.T) {
 	where, rho := everywhere()
 	k, ramp := NewKernel(1.1, 12), Ramp{Centre: 20, Width: 17}
-	move := NewMoving(swing{3}, k, ramp, modes(), where, 0.5)
+	move := NewMoving(swingPath{3}, k, ramp, modes(), where, 0.5)
 	for _, at := range []float64{13.2, 40.7, 61} {
 		var s worldline.State
-		swing{3}.At(at, &s)
+		swingPath{3}.At(at, &s)
 		on := (1 + math.Erf((at-20)/17)) / 2
 		dst := make([]float64, movingPoints*grid.Lanes)
 		move.Add(dst, at)
@@ -144,7 +144,7 @@ func TestMovingConverges(t *testing.T) {
 	where, _ := everywhere()
 	k := NewKernel(2, 16)
 	miss := func(dt float64) float64 {
-		move := NewMoving(swing{3}, k, On(), modes(), where, dt)
+		move := NewMoving(swingPath{3}, k, On(), modes(), where, dt)
 		worst := 0.0
 		a, b := make([]float64, movingPoints*grid.Lanes), make([]float64, movingPoints*grid.Lanes)
 		for step := 0; step < int(48/dt); step++ {
@@ -178,11 +178,11 @@ func TestMovingKeepsNoMemory(t *testing.T) {
 	where, _ := everywhere()
 	k, ramp := NewKernel(1, 12), Ramp{Centre: 20, Width: 5}
 	const dt = 0.5
-	whole := NewMoving(swing{3}, k, ramp, modes(), where, dt)
+	whole := NewMoving(swingPath{3}, k, ramp, modes(), where, dt)
 	for step := 0; step < 80; step++ {
 		at := float64(step) * dt
 		whole.Prepare(at, dt)
-		fresh := NewMoving(swing{3}, k, ramp, modes(), where, dt)
+		fresh := NewMoving(swingPath{3}, k, ramp, modes(), where, dt)
 		fresh.Prepare(at, dt)
 		for j := 0; j <= 8; j += 4 {
 			a, b := make([]float64, movingPoints*grid.Lanes), make([]float64, movingPoints*grid.Lanes)
@@ -214,7 +214,7 @@ func TestMovingIsCut(t *testing.T) {
 	k := NewKernel(1, 12)
 	sum := func(where Range, at float64) float64 {
 		dst := make([]float64, movingPoints*grid.Lanes)
-		NewMoving(swing{3}, k, On(), modes(), where, 0.5).Add(dst, at)
+		NewMoving(swingPath{3}, k, On(), modes(), where, 0.5).Add(dst, at)
 		return largest(dst)
 	}
 	if sum(where, 10) == 0 {
@@ -230,7 +230,7 @@ func TestMovingIsCut(t *testing.T) {
 		}
 	}
 	five := append(modes(), NewMasterSource(5, 5))
-	if !panics(func() { NewMoving(swing{3}, k, On(), five, where, 0.5) }) {
+	if !panics(func() { NewMoving(swingPath{3}, k, On(), five, where, 0.5) }) {
 		t.Error("five modes in a block of four: no panic")
 	}
 }
