@@ -77,7 +77,8 @@ func absolute(f []float64, dt float64) float64 {
 // larger of what an exponential and what a power of the time since origin
 // (counted in samples before the first of f, e.g. minus the index of a burst's
 // middle) go on to give. noise bounds the errors of f; a stretch that is all
-// inside it counts as settled and adds its own integral. ok is false when f
+// inside it, or below 1e-12 of the whole, counts as settled and adds its own
+// integral. ok is false when f
 // does not fall: then nothing is known about the rest.
 func Rest(f, noise []float64, dt float64, stretch int, origin float64) (bound float64, ok bool) {
 	n := len(f)
@@ -95,6 +96,9 @@ func Rest(f, noise []float64, dt float64, stretch int, origin float64) (bound fl
 		settled = math.Abs(f[k]) <= noise[k]
 	}
 	if settled {
+		return last, true
+	}
+	if last <= negligible*absolute(f, dt) {
 		return last, true
 	}
 	r := last / before
@@ -128,6 +132,10 @@ func Rest(f, noise []float64, dt float64, stretch int, origin float64) (bound fl
 	}
 	return doubt * bound, true
 }
+
+// negligible is the fraction of the whole below which a stretch counts as
+// settled whatever it does: the floor of an evolution.
+const negligible = 1e-12
 
 // doubt multiplies an extrapolated rest: neither law holds exactly.
 const doubt = 1.5
