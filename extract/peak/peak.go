@@ -31,7 +31,9 @@ type Options struct {
 	Factor float64
 	// Guard keeps the bar from vanishing where a difference crosses zero: this
 	// fraction of what the differences of h and its derivatives could at most
-	// have made is added. 0 means 0.2.
+	// have made is added. 0 means 0.3, which
+	// covers errors of the two rungs that are turned against each other by as
+	// many rad.
 	Guard float64
 }
 
@@ -159,7 +161,7 @@ func At(s signal.Series, u float64, o Options) (map[string]result.Q, error) {
 func (o Options) rung(v, other float64, c [4]complex128, here, there *signal.Jet) float64 {
 	guard := o.Guard
 	if guard == 0 {
-		guard = 0.2
+		guard = 0.3
 	}
 	var could float64
 	for d := range c {

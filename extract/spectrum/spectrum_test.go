@@ -149,6 +149,11 @@ func TestRingdown(t *testing.T) {
 	if d := math.Abs(slope / bend); d > q.Error+1e-7 || bend >= 0 {
 		t.Errorf("peak %+v is %g from the maximum of the direct sum", q, d)
 	}
+	// Cut off at a tenth of its amplitude: the bar says what that costs.
+	short, err := spectrum.Peak(parts, spectrum.Options{From: -200, To: 26})
+	if d := math.Abs(short.Value - q.Value); err != nil || d > short.Error || d < 1e-7 || short.Error > 1e-3 {
+		t.Errorf("cut short: %+v, %g from %g, %v", short, d, q.Value, err)
+	}
 	// A coarser run that is off by a known shift widens the bar by it.
 	coarse := make([]spectrum.Part, 2)
 	for i, p := range parts {
