@@ -69,6 +69,7 @@ func newBoundRun(c *configs.Case, n numerics, o Options) (*boundRun, error) {
 	r.advance = r.numbers["omega_phi"] * r.period
 	r.power = min(certify.WindowPower(r.asked), 3)
 	r.n.placeBetween(hyperboloidal.TortoiseAt(r.numbers["r_min"]), hyperboloidal.TortoiseAt(r.numbers["r_max"]))
+	r.n.stopAt()
 	for _, lm := range c.ModeList() {
 		m := newLadder(lm[0], lm[1])
 		m.mov = &movingMode{}
