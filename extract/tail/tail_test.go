@@ -132,8 +132,13 @@ func TestRefusals(t *testing.T) {
 	// u^-12: round-off has eaten it by 1200 M.
 	steep := law{p: 12, c: math.Pow(250, 12) * 1e-9, a: 40, last: 3000, noise: 1e-16}.series(rng)
 	var eaten *RoundOff
-	if _, err := Analyse(steep, Options{From: number(1500)}); !errors.As(err, &eaten) || eaten.Since > 1300 || eaten.Since < 300 {
+	if _, err := Analyse(steep, Options{From: number(1500)}); !errors.As(err, &eaten) || eaten.Since < 1499 || eaten.Since > 1510 {
 		t.Errorf("tail past round-off: %v", err)
+	}
+	// Asked for from 500 M on, it is taken over at 1e-9 (250/u)^12 = 1e-16/0.02,
+	// u = 690, which leaves too little.
+	if _, err := Analyse(steep, Options{From: number(500)}); !errors.As(err, &eaten) || eaten.Since < 600 || eaten.Since > 750 {
+		t.Errorf("tail up to round-off: %v", err)
 	}
 	// Ringing until the end.
 	ring := law{last: 200}.series(rng)
