@@ -14,6 +14,9 @@ type noise struct {
 
 const diffOrder = 6
 
+// ringOut keeps the half waves of the ringing from counting as long.
+const ringOut = 100.0
+
 func newNoise(s Series) *noise {
 	n := &noise{block: 32}
 	d := make([]float64, len(s.Values))
@@ -44,25 +47,34 @@ func (n *noise) level(k int) float64 {
 }
 
 // quiet finds the stretch [begin, end] inside [lo, hi] on which a power law may
-// be sought: the longest in ln u without a zero of psi, ended early where the
-// noise exceeds the fraction eaten of the signal. full is where noise takes
-// over for good (the end of the series if it does not).
+// be sought: of those after the peak without a zero of psi, and where the noise
+// stays below the fraction eaten of the signal, the one with the largest ratio
+// of its end to its start, times counted from ringOut before the peak. full is
+// where noise takes over for good (the end of the series if it does not).
 func quiet(s Series, n *noise, lo, hi float64) (begin, end, full float64) {
 	a, b := s.index(lo), s.index(hi)
+	peak := 0
+	for k, v := range s.Values {
+		if math.Abs(v) > math.Abs(s.Values[peak]) {
+			peak = k
+		}
+	}
+	a = max(a, min(peak, b))
+	zero := s.time(peak) - ringOut
 	full = s.time(b)
 	for k := b; k > a && n.level(k) > eaten*math.Abs(s.Values[k]); k-- {
 		full = s.time(k)
 	}
 	start := a
-	bestLen := 0.0
+	longest := 1.0
 	closeAt := func(k int) {
-		if t0, t1 := s.time(start), s.time(k); t0 > 0 && t1 > t0 && math.Log(t1/t0) > bestLen {
-			bestLen, begin, end = math.Log(t1/t0), t0, t1
+		if t0, t1 := s.time(start), s.time(k); t1 > t0 && (t1-zero)/(t0-zero) > longest {
+			longest, begin, end = (t1-zero)/(t0-zero), t0, t1
 		}
 	}
 	for k := a + 1; k <= b; k++ {
-		zero := s.Values[k] == 0 || math.Signbit(s.Values[k]) != math.Signbit(s.Values[k-1])
-		if zero || n.level(k) > eaten*math.Abs(s.Values[k]) {
+		crosses := s.Values[k] == 0 || math.Signbit(s.Values[k]) != math.Signbit(s.Values[k-1])
+		if crosses || n.level(k) > eaten*math.Abs(s.Values[k]) {
 			closeAt(k - 1)
 			start = k
 		}

@@ -30,6 +30,10 @@ type Series struct {
 // of what round-off leaves.
 type Options struct {
 	From, To *float64
+	// Regular says that the corrections are a series in 1/u without early
+	// logarithms, as at a fixed radius and on the horizon. Otherwise (null
+	// infinity) both forms are tried and what they differ by is an error.
+	Regular bool
 }
 
 // Index is the local power index with its bar at each of Times.
@@ -135,7 +139,7 @@ func Analyse(s Series, o Options) (*Fit, error) {
 	}
 	f := &Fit{Begin: begin, End: end, Level: noise.level(s.index(end))}
 	f.Local = local(s, noise, begin, end)
-	if !scan(s, f) {
+	if !scan(s, f, o.Regular) {
 		return nil, &NoTail{begin, end}
 	}
 	if f.Exponent.Error > vague {
