@@ -49,6 +49,7 @@ type Outcome struct {
 	Fit     *ringing.Fit // amplitudes, phases, windows; nil without ringing
 	Tail    *result.Tail
 	Index   *tail.Fit // local index and windows; nil without a tail
+	Rungs   float64   // share of the fundamental's bar that comes from the rungs' difference, absolute
 	// Error is the bar of each sample of Fine.Psi.
 	Error    []float64
 	Warnings []string
@@ -79,11 +80,11 @@ func Measure(p Place, w Wanted) Outcome {
 	o := Outcome{Error: bars(p)}
 	name := fmt.Sprintf("(%d,%d) at %s", p.L, p.M, p.Where)
 	if w.Ringing {
-		fit, err := ring(p, w)
+		fit, rungs, err := ring(p, w)
 		if err != nil {
 			o.Warnings = append(o.Warnings, name+": "+err.Error())
 		} else {
-			o.Fit, o.Ringing = fit, fit.Ringing(p.Where)
+			o.Fit, o.Ringing, o.Rungs = fit, fit.Ringing(p.Where), rungs
 			for _, s := range fit.Warnings {
 				o.Warnings = append(o.Warnings, name+": "+s)
 			}
@@ -124,8 +125,9 @@ func bars(p Place) []float64 {
 	return out
 }
 
-// ring fits both rungs and joins them.
-func ring(p Place, w Wanted) (*ringing.Fit, error) {
+// ring fits both rungs and joins them. rungs is what the fundamental's bar has
+// from the rungs' difference.
+func ring(p Place, w Wanted) (fine *ringing.Fit, rungs float64, err error) {
 	pick := func(s Signal) ringing.Series {
 		y := s.Psi
 		if p.Where == "infinity" {
@@ -134,15 +136,15 @@ func ring(p Place, w Wanted) (*ringing.Fit, error) {
 		return ringing.Series{Start: s.Start, Step: s.Step, Values: y}
 	}
 	opt := ringing.Options{L: p.L, M: p.M, Overtones: w.Overtones, Expected: w.Expected}
-	fine, err := ringing.Analyse(pick(p.Fine), opt)
+	fine, err = ringing.Analyse(pick(p.Fine), opt)
 	if err != nil {
-		return nil, err
+		return nil, 0, err
 	}
 	coarse, err := ringing.Analyse(pick(p.Coarse), opt)
 	if err != nil {
 		var none *ringing.NotRinging
 		if !errors.As(err, &none) {
-			return nil, err
+			return nil, 0, err
 		}
 		coarse = &ringing.Fit{}
 	}
@@ -158,13 +160,16 @@ func ring(p Place, w Wanted) (*ringing.Fit, error) {
 			d := share * math.Hypot(m.Omega.Re.Value-other.Omega.Re.Value, m.Omega.Im.Value-other.Omega.Im.Value)
 			m.Omega.Re.Error += d
 			m.Omega.Im.Error += d
+			if m.Own && m.N == 0 {
+				rungs = d
+			}
 			m.Amplitude.Error += share * math.Abs(m.Amplitude.Value-other.Amplitude.Value)
 			m.Phase.Error += share * math.Abs(math.Remainder(m.Phase.Value-other.Phase.Value, 2*math.Pi))
 		}
 		kept = append(kept, m)
 	}
 	fine.Modes = kept
-	return fine, nil
+	return fine, rungs, nil
 }
 
 // largestPart projects a complex series on the phase that ref has at its end:

@@ -45,6 +45,8 @@ type pulseScheme struct {
 	radius  float64 // where the field is recorded besides the two ends
 	until   float64 // last retarded time at null infinity
 	sample  float64 // between two samples kept
+	stored  int     // every how many of these are stored
+	dx      float64 // of the finest rung asked for at first
 }
 
 // pulseRun is what one rung leaves of one block of fields: Signals[q][place].
