@@ -57,7 +57,7 @@ func pulseProblems(c *configs.Case) []configs.Problem {
 		return out
 	}
 	s := newPulseScheme(c)
-	if g := s.grid(s.dx); s.pulse.Check(s.domain.Ri, s.domain.Ro, g.Dx/pulseRatio) != nil {
+	if g := s.grid(s.spacing(0)); s.pulse.Check(s.domain.Ri, s.domain.Ro, g.Dx) != nil {
 		need := int(math.Ceil((s.domain.So-s.domain.Si)/(s.pulse.CoarsestSpacing()*pulseRatio))) + 1
 		out = append(out, configs.Problem{Key: "numerics.points", Value: *c.Numerics.Points,
 			Want: fmt.Sprintf("at least %d: the coarser rung must resolve a pulse of width %g", need, p.Width)})
@@ -147,34 +147,30 @@ type pulseCase struct {
 	s      *pulseScheme
 	fields []pulseField
 	meter  *meter
-	runs   map[float64][]*pulseRun // by spacing asked for, one a block
-	dxs    []float64               // spacings run, coarsest first
+	runs   [][]*pulseRun // by rung, coarsest first; one a block
 }
 
 // runPulse evolves the fields of a pulse and measures what they leave.
 func runPulse(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	clock := startClock()
-	r := &pulseCase{c: c, o: o, s: newPulseScheme(c), fields: pulseFields(c),
-		meter: &meter{tell: o.Progress}, runs: map[float64][]*pulseRun{}}
-	dx := r.s.dx
-	if err := r.rung(ctx, dx/pulseRatio); err != nil {
+	r := &pulseCase{c: c, o: o, s: newPulseScheme(c), fields: pulseFields(c), meter: &meter{tell: o.Progress}}
+	if err := r.rung(ctx); err != nil {
 		return nil, err
 	}
 	var found [][pulsePlaces]pulse.Outcome
 	for climb := 0; ; climb++ {
-		if err := r.rung(ctx, dx); err != nil {
+		if err := r.rung(ctx); err != nil {
 			return nil, err
 		}
 		var err error
-		if found, err = r.measure(ctx, dx); err != nil {
+		if found, err = r.measure(ctx); err != nil {
 			return nil, err
 		}
 		if climb == pulseClimbs || c.Numerics.Points != nil || !r.climbs(found) {
 			break
 		}
-		dx *= pulseRatio
 	}
-	b, err := r.assemble(found, dx)
+	b, err := r.assemble(found)
 	if err != nil {
 		return nil, err
 	}
@@ -191,9 +187,13 @@ func (r *pulseCase) blocks() [][2]int {
 	return out
 }
 
-// rung evolves all fields on the grid of spacing dx.
-func (r *pulseCase) rung(ctx context.Context, dx float64) error {
+// spacing is that of rung k: rung 1 has the scheme's, rung 0 is coarser.
+func (s *pulseScheme) spacing(k int) float64 { return s.dx * math.Pow(pulseRatio, float64(k-1)) }
+
+// rung evolves all fields on the next finer grid.
+func (r *pulseCase) rung(ctx context.Context) error {
 	blocks := r.blocks()
+	dx := r.s.spacing(len(r.runs))
 	g := r.s.grid(dx)
 	r.meter.stage(fmt.Sprintf("evolving %d fields on %d points", len(r.fields), g.N))
 	r.meter.expect(float64(len(blocks)) * float64(r.s.samples()*r.s.steps(g)*g.N))
@@ -205,8 +205,7 @@ func (r *pulseCase) rung(ctx context.Context, dx float64) error {
 		})
 		return err
 	})
-	r.runs[dx] = runs
-	r.dxs = append(r.dxs, dx)
+	r.runs = append(r.runs, runs)
 	return err
 }
 
@@ -234,13 +233,13 @@ func keptPulse(keep Keeper, key string, compute func() (*pulseRun, error)) (*pul
 	return p, nil
 }
 
-// signals are those of field q at a place on the grid of spacing dx.
-func (r *pulseCase) signals(dx float64, q, place int) pulse.Signal {
-	return r.runs[dx][q/grid.Lanes].Signals[q%grid.Lanes][place]
+// signals are those of field q at a place, back rungs below the finest.
+func (r *pulseCase) signals(back, q, place int) pulse.Signal {
+	return r.runs[len(r.runs)-1-back][q/grid.Lanes].Signals[q%grid.Lanes][place]
 }
 
 // measure analyses every field at every place.
-func (r *pulseCase) measure(ctx context.Context, dx float64) ([][pulsePlaces]pulse.Outcome, error) {
+func (r *pulseCase) measure(ctx context.Context) ([][pulsePlaces]pulse.Outcome, error) {
 	r.meter.stage("measuring ringing and tails")
 	out := make([][pulsePlaces]pulse.Outcome, len(r.fields))
 	err := each(ctx, r.o.Workers, len(r.fields)*pulsePlaces, func(_ context.Context, i int) error {
@@ -248,7 +247,7 @@ func (r *pulseCase) measure(ctx context.Context, dx float64) ([][pulsePlaces]pul
 		lm := r.fields[q].modes[0]
 		out[q][place] = pulse.Measure(pulse.Place{
 			L: lm[0], M: lm[1], Where: r.where(place), Ratio: pulseRatio,
-			Fine: r.signals(dx, q, place), Coarse: r.signals(dx/pulseRatio, q, place),
+			Fine: r.signals(0, q, place), Coarse: r.signals(1, q, place),
 		}, pulse.Wanted{Ringing: place != atRadius, Tail: r.s.wantsTail()})
 		return nil
 	})
@@ -293,7 +292,7 @@ func (r *pulseCase) climbs(found [][pulsePlaces]pulse.Outcome) bool {
 }
 
 // assemble turns the outcomes into the data of a result.
-func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome, dx float64) (*result.Bundle, error) {
+func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome) (*result.Bundle, error) {
 	tree, err := caseTree(r.c)
 	if err != nil {
 		return nil, err
@@ -304,10 +303,10 @@ func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome, dx float64) (*r
 	for _, f := range r.fields {
 		names = append(names, f.name)
 	}
-	for _, d := range r.dxs {
-		g := r.runs[d][0].Rung
+	for _, runs := range r.runs {
+		g := runs[0].Rung
 		g.CoreSeconds = 0
-		for _, run := range r.runs[d] {
+		for _, run := range runs {
 			g.CoreSeconds += run.Rung.CoreSeconds
 		}
 		g.Modes = strings.Join(names, "; ")
@@ -342,7 +341,7 @@ func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome, dx float64) (*r
 				r.verdict(&res.Accuracy, o, e.l, e.m, r.where(p))
 			}
 		}
-		series.Modes = append(series.Modes, r.modeSeries(e.q, e.l, e.m, dx, found[e.q]))
+		series.Modes = append(series.Modes, r.modeSeries(e.q, e.l, e.m, found[e.q]))
 	}
 	for q := range found {
 		for p := range found[q] {
@@ -381,10 +380,10 @@ func (r *pulseCase) times() *result.Series {
 	return s
 }
 
-func (r *pulseCase) modeSeries(q, l, m int, dx float64, found [pulsePlaces]pulse.Outcome) result.ModeSeries {
+func (r *pulseCase) modeSeries(q, l, m int, found [pulsePlaces]pulse.Outcome) result.ModeSeries {
 	out := result.ModeSeries{L: l, M: m}
-	inf, hor := r.signals(dx, q, atInfinity), r.signals(dx, q, atHorizon)
-	coarse := r.signals(dx/pulseRatio, q, atInfinity)
+	inf, hor := r.signals(0, q, atInfinity), r.signals(0, q, atHorizon)
+	coarse := r.signals(1, q, atInfinity)
 	for k := 0; k < len(inf.Psi); k += r.s.stored {
 		out.Wave = append(out.Wave, inf.Psi[k])
 		out.WaveErr = append(out.WaveErr, found[atInfinity].Error[k])
@@ -421,8 +420,8 @@ func planPulse(c *configs.Case) (*Plan, error) {
 	for _, f := range fields {
 		names = append(names, f.name)
 	}
-	for k, dx := range []float64{s.dx / pulseRatio, s.dx} {
-		g := s.grid(dx)
+	for k := range 2 {
+		g := s.grid(s.spacing(k))
 		steps := s.samples() * s.steps(g)
 		dt := s.sample / float64(s.steps(g))
 		sec := float64(blocks) * float64(steps) * float64(s.taylor) * float64(g.N*grid.Lanes) * nsPerPoint * 1e-9
