@@ -14,8 +14,6 @@ import (
 	"nullmark/extract/result"
 	"nullmark/extract/strain"
 	"nullmark/hyperboloidal"
-
-	"go.yaml.in/yaml/v3"
 )
 
 const (
@@ -25,7 +23,7 @@ const (
 
 // assemble turns finished ladders into the data of a result.
 func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
-	tree, err := caseTree(c)
+	tree, err := c.Tree()
 	if err != nil {
 		return nil, err
 	}
@@ -33,6 +31,18 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
 		Orbit: r.describe(), Warnings: append([]string{}, Warnings(c)...),
 	}
+	index := r.rungList(res)
+	for _, m := range r.modes {
+		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
+	}
+	sumModes(c, res, rate)
+	verdict(c, res)
+	return &result.Bundle{Result: res, Series: r.series(c)}, nil
+}
+
+// rungList writes the rungs that were run into the result, coarsest first, and
+// returns their places in it.
+func (r *climb) rungList(res *result.Result) map[int]int {
 	index := map[int]int{}
 	var ks []int
 	for k := range r.rungs {
@@ -50,25 +60,7 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		g.Modes = strings.Join(names, " ")
 		res.Rungs = append(res.Rungs, g)
 	}
-	for _, m := range r.modes {
-		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
-	}
-	r.totals(c, res)
-	r.verdict(c, res)
-	return &result.Bundle{Result: res, Series: r.series(c)}, nil
-}
-
-// caseTree is the resolved case as plain maps and lists.
-func caseTree(c *configs.Case) (any, error) {
-	text, err := c.YAML()
-	if err != nil {
-		return nil, err
-	}
-	var tree any
-	if err := yaml.Unmarshal(text, &tree); err != nil {
-		return nil, err
-	}
-	return tree, nil
+	return index
 }
 
 func (r *circularRun) describe() *result.Orbit {
@@ -84,12 +76,12 @@ func (r *circularRun) describe() *result.Orbit {
 }
 
 func (r *circularRun) entry(m *ladder, rung int) result.Mode {
-	t := m.mode.tone
-	inf, hor := m.bars[certify.Infinity], m.bars[certify.Horizon]
+	t := m.circ.tone
+	inf, hor := m.circ.bars[certify.Infinity], m.circ.bars[certify.Horizon]
 	out := result.Mode{
-		L: t.L, M: t.M, Parity: parityName(m.mode.parity), Measure: rate, Counts: bothSigns,
-		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Infinity]), inf.Bar()),
-		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Horizon]), hor.Bar()),
+		L: t.L, M: t.M, Parity: m.parity.String(), Measure: rate, Counts: bothSigns,
+		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.circ.z[certify.Infinity]), inf.Bar()),
+		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.circ.z[certify.Horizon]), hor.Bar()),
 		Met:      m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
 			"discretisation": inf.Discretisation, "transient": inf.Transient, "round-off": inf.RoundOff,
@@ -105,19 +97,20 @@ func (r *circularRun) entry(m *ladder, rung int) result.Mode {
 // strainAmplitude is r h_lm e^{i m phi_p(u)}/mu: with u = tau - So the tone
 // Z e^{-i omega tau} is Z e^{-i omega So} e^{-i omega u}.
 func (r *circularRun) strainAmplitude(m *ladder) complex128 {
-	return strain.Factor(m.mode.tone.L, m.mode.parity == equations.Odd) *
-		m.z[certify.Infinity] * cmplx.Exp(complex(0, -m.mode.tone.Omega*r.n.domain.So))
+	return strain.Factor(m.circ.tone.L, m.parity == equations.Odd) *
+		m.circ.z[certify.Infinity] * cmplx.Exp(complex(0, -m.circ.tone.Omega*r.n.domain.So))
 }
 
-func (r *circularRun) totals(c *configs.Case, res *result.Result) {
+// sumModes adds up the modes, by m and in all, with the estimated tail in l.
+func sumModes(c *configs.Case, res *result.Result, measure string) {
 	var inf, hor []*result.Flux
 	for i := range res.Modes {
 		inf = append(inf, res.Modes[i].Infinity)
 		hor = append(hor, res.Modes[i].Horizon)
 	}
-	total := &result.Total{Measure: rate, Infinity: flux.Sum(inf...), Horizon: flux.Sum(hor...)}
+	total := &result.Total{Measure: measure, Infinity: flux.Sum(inf...), Horizon: flux.Sum(hor...)}
 	res.Total = total
-	for m := 1; m <= c.Waves.LMax; m++ {
+	for m := 0; m <= c.Waves.LMax; m++ {
 		var a, b []*result.Flux
 		for i := range res.Modes {
 			if res.Modes[i].M == m {
@@ -141,31 +134,44 @@ func (r *circularRun) totals(c *configs.Case, res *result.Result) {
 		}
 		return out[2:]
 	}
-	ei, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Infinity.Energy.Value }), 0)
-	eh, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Horizon.Energy.Value }), 0.02)
+	tail := func(end func(*result.Mode) *result.Flux, margin float64) (*result.Flux, bool) {
+		e, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).Energy.Value }), margin)
+		l, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value }), margin)
+		return &result.Flux{Energy: e, AngularMomentum: l}, ok1 && ok2
+	}
+	if total.Horizon == nil {
+		// Nothing is absorbed that could be told apart from the particle itself.
+		inf, ok := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
+		if !ok {
+			t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
+			return
+		}
+		t.Infinity = inf
+		total.Infinity = flux.Sum(total.Infinity, inf)
+		return
+	}
+	inf1, ok1 := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
+	hor1, ok2 := tail(func(m *result.Mode) *result.Flux { return m.Horizon }, 0.02)
 	if !ok1 || !ok2 {
 		t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
 		res.Warnings = append(res.Warnings, t.Note)
 		return
 	}
-	// On a circular orbit dE = Omega dL mode by mode, so also in the tail.
-	t.Infinity = tailFlux(ei, r.orbit.omega)
-	t.Horizon = tailFlux(eh, r.orbit.omega)
+	t.Infinity, t.Horizon = inf1, hor1
 	total.Infinity = flux.Sum(total.Infinity, t.Infinity)
 	total.Horizon = flux.Sum(total.Horizon, t.Horizon)
 }
 
-func tailFlux(e result.Q, omega float64) *result.Flux {
-	return &result.Flux{Energy: e, AngularMomentum: result.Q{Value: e.Value / omega, Error: e.Error / omega}}
-}
-
 // verdict compares every bar with what was asked.
-func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
+func verdict(c *configs.Case, res *result.Result) {
 	a := result.Accuracy{Asked: c.Accuracy.Relative, Floor: c.Accuracy.Floor, Met: true}
 	var largest [2]float64
 	ends := func(m *result.Mode) [2]*result.Flux { return [2]*result.Flux{m.Infinity, m.Horizon} }
 	for i := range res.Modes {
 		for e, f := range ends(&res.Modes[i]) {
+			if f == nil {
+				continue
+			}
 			largest[e] = math.Max(largest[e], f.Energy.Value)
 		}
 	}
@@ -176,9 +182,15 @@ func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
-			// A mode below the floor is held to the floor: the same fraction
-			// of the asked accuracy on the scale asked/floor.
-			scale := math.Max(f.Energy.Value, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			if f == nil {
+				continue
+			}
+			scale := f.Energy.Value
+			if scale < c.Accuracy.Floor*largest[e] {
+				// Below the floor the bar is held to floor times the largest,
+				// which is the asked accuracy on this scale.
+				scale = math.Max(scale, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			}
 			if rel := f.Energy.Error / scale; rel > a.Worst.Relative {
 				a.Worst = result.Worst{L: m.L, M: m.M, What: "energy at " + certify.End(e).String(), Relative: rel}
 			}
@@ -221,9 +233,9 @@ func ladderOfTimes(step, from, to float64) []float64 {
 }
 
 func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
-	t := m.mode.tone
+	t := m.circ.tone
 	fine := m.runs[m.rung]
-	fac := strain.Factor(t.L, m.mode.parity == equations.Odd)
+	fac := strain.Factor(t.L, m.parity == equations.Odd)
 	d := r.n.domain
 	out := result.ModeSeries{L: t.L, M: t.M}
 	wave := func(s *certify.Samples) []complex128 {
@@ -239,14 +251,14 @@ func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
 	// The truth is the steady signal: what a sample still carries of the
 	// start-up is its distance from that, on top of the amplitude's own bar.
 	h := r.strainAmplitude(m)
-	bar := cmplx.Abs(h) * m.bars[certify.Infinity].Bar()
+	bar := cmplx.Abs(h) * m.circ.bars[certify.Infinity].Bar()
 	for i, t0 := range u {
 		steady := h * cmplx.Exp(complex(0, -t.Omega*t0))
 		out.WaveErr = append(out.WaveErr, cmplx.Abs(out.Wave[i]-steady)+bar)
 		out.Evidence = append(out.Evidence, cmplx.Abs(out.Wave[i]-coarse[i]))
 	}
-	zh := m.z[certify.Horizon]
-	barH := cmplx.Abs(zh) * m.bars[certify.Horizon].Bar()
+	zh := m.circ.z[certify.Horizon]
+	barH := cmplx.Abs(zh) * m.circ.bars[certify.Horizon].Bar()
 	for i, t0 := range v {
 		steady := zh * cmplx.Exp(complex(0, -t.Omega*(t0-d.Si)))
 		out.HorizonErr = append(out.HorizonErr, cmplx.Abs(out.Horizon[i]-steady)+barH)
