@@ -200,7 +200,7 @@ func (r *pulseCase) rung(ctx context.Context) error {
 	runs := make([]*pulseRun, len(blocks))
 	err := each(ctx, r.o.Workers, len(blocks), func(ctx context.Context, i int) error {
 		var err error
-		runs[i], err = keptPulse(r.o.Keep, fmt.Sprintf("pulse-%d-block-%d", g.N, i), func() (*pulseRun, error) {
+		runs[i], err = keptPulse(r.o.Keep, fmt.Sprintf("pulse-%d-points-block-%d", g.N, i), func() (*pulseRun, error) {
 			return r.s.evolve(ctx, r.fields[blocks[i][0]:blocks[i][1]], dx, r.meter.did)
 		})
 		return err
@@ -293,7 +293,7 @@ func (r *pulseCase) climbs(found [][pulsePlaces]pulse.Outcome) bool {
 
 // assemble turns the outcomes into the data of a result.
 func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome) (*result.Bundle, error) {
-	tree, err := caseTree(r.c)
+	tree, err := r.c.Tree()
 	if err != nil {
 		return nil, err
 	}

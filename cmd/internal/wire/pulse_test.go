@@ -2,7 +2,6 @@ package wire
 
 import (
 	"context"
-	"flag"
 	"fmt"
 	"math"
 	"sort"
@@ -13,17 +12,15 @@ import (
 	"nullmark/extract/result"
 )
 
-var longPulses = flag.Bool("long-pulses", false, "also run the tails and the calibration of pulses (minutes)")
-
 // Quasinormal frequencies M omega of a hole without spin, by field spin, l, n:
 // E. W. Leaver, Proc. R. Soc. A 402, 285 (1985), tables 1 (there 2M = 1) for the
 // gravitational ones; E. Berti, V. Cardoso & A. Starinets, Class. Quantum Grav.
 // 26, 163001 (2009) for the scalar ones; further digits from the continued
 // fraction of the former.
-type tone struct{ spin, l, n int }
+type pulseTone struct{ spin, l, n int }
 
-func published() map[tone]complex128 {
-	return map[tone]complex128{
+func publishedTones() map[pulseTone]complex128 {
+	return map[pulseTone]complex128{
 		{2, 2, 0}: complex(0.373671684418042, -0.0889623156889357),
 		{2, 2, 1}: complex(0.346710996879163, -0.273914875291235),
 		{2, 3, 0}: complex(0.59944328843749, -0.0927030479449476),
@@ -68,7 +65,7 @@ func TestRingingOfPulses(t *testing.T) {
 	limit := map[string]map[int]float64{"infinity": {20: 1e-9, 21: 1e-4, 30: 1e-8, 40: 1e-8}, "horizon": {20: 1e-11, 21: 1e-6, 30: 1e-8, 40: 1e-8}}
 	seen := 0
 	for _, r := range b.Result.Ringing {
-		w, ok := published()[tone{2, r.L, r.N}]
+		w, ok := publishedTones()[pulseTone{2, r.L, r.N}]
 		if !ok {
 			t.Errorf("unexpected (%d,%d) n = %d", r.L, r.M, r.N)
 			continue
@@ -110,7 +107,7 @@ func TestScalarPulses(t *testing.T) {
 	}
 	fundamentals := 0
 	for _, r := range b.Result.Ringing {
-		w := published()[tone{0, r.L, r.N}]
+		w := publishedTones()[pulseTone{0, r.L, r.N}]
 		rel, ratio := offBy(r, w)
 		t.Logf("(%d,%d) n = %d at %s: off by %.1e, bar/error %.1f", r.L, r.M, r.N, r.Where, rel, ratio)
 		if ratio < 1 {
@@ -134,7 +131,7 @@ func TestPulseSchedulingChangesNothing(t *testing.T) {
 	c := pulseOf(6, 2, "out", [2]int{2, 0})
 	c.Numerics.Points = new(int)
 	*c.Numerics.Points = 330
-	keep := &memory{m: map[string][]byte{}}
+	keep := &memoryKeeper{parts: map[string][]byte{}}
 	text := func(o Options) string {
 		b, err := runPulse(context.Background(), c, o)
 		if err != nil {
@@ -143,18 +140,16 @@ func TestPulseSchedulingChangesNothing(t *testing.T) {
 		return fmt.Sprintf("%v %v %v", b.Result.Ringing, b.Result.Accuracy, b.Series.Modes[0].Wave)
 	}
 	a := text(Options{Workers: 1, Keep: keep})
-	if len(keep.m) != 2 {
-		t.Errorf("%d parts kept, want 2", len(keep.m))
+	if len(keep.parts) != 2 {
+		t.Errorf("%d parts kept, want 2", len(keep.parts))
 	}
-	if again := text(Options{Workers: 2, Keep: keep}); again != a {
-		t.Error("a resumed run differs")
+	if again := text(Options{Workers: 2, Keep: keep}); again != a || keep.loads != 2 {
+		t.Errorf("a resumed run differs, or took up %d parts", keep.loads)
+	}
+	if fresh := text(Options{Workers: 2}); fresh != a {
+		t.Error("a run with two workers differs")
 	}
 }
-
-type memory struct{ m map[string][]byte }
-
-func (k *memory) Load(key string) ([]byte, bool)  { d, ok := k.m[key]; return d, ok }
-func (k *memory) Save(key string, d []byte) error { k.m[key] = d; return nil }
 
 func TestPulseProblems(t *testing.T) {
 	points := func(c *configs.Case, n int) *configs.Case { c.Numerics.Points = &n; return c }
@@ -208,8 +203,8 @@ func TestPlanPulse(t *testing.T) {
 // 5, 2419 (1972); C. Gundlach, R. H. Price & J. Pullin, Phys. Rev. D 49, 883
 // (1994).
 func TestTailsOfPulses(t *testing.T) {
-	if !*longPulses {
-		t.Log("with -long-pulses")
+	if !*long {
+		t.Log("with -long")
 		return
 	}
 	for _, moving := range []string{"in", "static"} {
@@ -245,8 +240,8 @@ func TestTailsOfPulses(t *testing.T) {
 // widths and motions: at least 95 % hold the published value, and the median
 // bar is at most 10 times the error.
 func TestCalibrationOfPulses(t *testing.T) {
-	if !*longPulses {
-		t.Log("with -long-pulses")
+	if !*long {
+		t.Log("with -long")
 		return
 	}
 	ratios := map[string][]float64{}
@@ -261,7 +256,7 @@ func TestCalibrationOfPulses(t *testing.T) {
 					t.Fatal(err)
 				}
 				for _, r := range b.Result.Ringing {
-					rel, ratio := offBy(r, published()[tone{2, r.L, r.N}])
+					rel, ratio := offBy(r, publishedTones()[pulseTone{2, r.L, r.N}])
 					key := fmt.Sprintf("n = %d at %s", r.N, r.Where)
 					ratios[key] = append(ratios[key], ratio)
 					if ratio < 1 {
