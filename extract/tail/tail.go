@@ -85,8 +85,8 @@ type RoundOff struct {
 }
 
 func (e *RoundOff) Error() string {
-	return fmt.Sprintf("tail: from %.6g M on round-off (%.1e) is more than %g of the signal (%.1e), so that no exponent follows from %.6g M on; ask for an earlier time, or for data that decay more slowly (moving, not static; lower l)",
-		e.Since, e.Level, eaten, e.Signal, e.Asked)
+	return fmt.Sprintf("tail: from %.6g M on round-off (%.1e) eats the signal (%.1e), so that no exponent follows from %.6g M on; ask for an earlier time, or for data that decay more slowly (moving, not static; lower l)",
+		e.Since, e.Level, e.Signal, e.Asked)
 }
 
 // Vague says that every fit moves by more than half a unit of the exponent.
@@ -100,7 +100,8 @@ func (e *Vague) Error() string {
 }
 
 const (
-	eaten    = 0.02 // round-off over signal from which the tail counts as eaten
+	eaten    = 0.02 // white noise over signal from which the tail counts as eaten
+	parted   = 0.2  // difference of two runs over signal from which it does
 	vague    = 0.5  // bar of an exponent that says nothing
 	binWidth = 0.01 // of ln u
 	minRatio = 1.7  // u2/u1 of a fit

@@ -140,6 +140,20 @@ func TestRefusals(t *testing.T) {
 	if _, err := Analyse(steep, Options{From: number(500)}); !errors.As(err, &eaten) || eaten.Since < 600 || eaten.Since > 750 {
 		t.Errorf("tail up to round-off: %v", err)
 	}
+	// Errors that are smooth in time are seen by the second run alone.
+	smooth := law{p: 6, c: math.Pow(250, 6) * 1e-9, a: 40, last: 3000}.series(rng)
+	smooth.Other = append([]float64(nil), smooth.Values...)
+	for k := range smooth.Values {
+		smooth.Values[k] += 3e-15
+		smooth.Other[k] -= 3e-15
+	}
+	// 1e-9 (250/u)^6 = 6e-15/0.2 at u = 1418.
+	if _, err := Analyse(smooth, Options{From: number(1500)}); !errors.As(err, &eaten) || eaten.Level < 5e-15 {
+		t.Errorf("two runs apart: %v", err)
+	}
+	if f, err := Analyse(smooth, Options{}); err != nil || f.End > 1450 || math.Abs(f.Exponent.Value-6) > f.Exponent.Error {
+		t.Errorf("two runs apart at the end: %+v, %v", f, err)
+	}
 	// Ringing until the end.
 	ring := law{last: 200}.series(rng)
 	var none *NoTail

@@ -279,3 +279,58 @@ func TestCalibrationOfPulses(t *testing.T) {
 		}
 	}
 }
+
+// TestCalibrationOfTails measures the bars of exponents over positions, widths
+// and motions, l = 2 and 3 of both parities and the scalar l = 0 and 1.
+func TestCalibrationOfTails(t *testing.T) {
+	if !*long {
+		t.Log("with -long")
+		return
+	}
+	var ratio []float64
+	worst := 0.0
+	for _, moving := range []string{"in", "static", "out"} {
+		for _, place := range [][2]float64{{25, 3}, {40, 4}, {60, 5}} {
+			for _, scalar := range []bool{false, true} {
+				c := pulseOf(place[0], place[1], moving, [2]int{2, 0}, [2]int{2, 1}, [2]int{3, 0}, [2]int{3, 1})
+				if scalar {
+					c = pulseOf(place[0], place[1], moving, [2]int{0, 0}, [2]int{1, 0})
+					c.Waves.Equation = configs.Teukolsky
+				}
+				until := 2500.0
+				c.Span.Until = &until
+				b, err := runPulse(context.Background(), c, Options{Workers: 2})
+				if err != nil {
+					t.Fatal(err)
+				}
+				for _, g := range b.Result.Tail {
+					want := float64(2*g.L + 3)
+					if g.Where == "infinity" {
+						want = float64(g.L + 2)
+					}
+					if moving == "static" {
+						want++
+					}
+					d := math.Abs(g.Exponent.Value - want)
+					ratio = append(ratio, g.Exponent.Error/(d+1e-16))
+					if g.L <= 2 {
+						worst = math.Max(worst, d)
+					}
+					if d > g.Exponent.Error {
+						t.Logf("%s %v l = %d at %s: %.5f ± %.1e, want %g", moving, place, g.L, g.Where, g.Exponent.Value, g.Exponent.Error, want)
+					}
+				}
+			}
+		}
+	}
+	sort.Float64s(ratio)
+	covered := 1 - float64(sort.SearchFloat64s(ratio, 1))/float64(len(ratio))
+	mid := ratio[len(ratio)/2]
+	t.Logf("%d tails, covered %.3f, median bar/error %.2f, largest error for l <= 2 %.1e", len(ratio), covered, mid, worst)
+	if covered < 0.95 || mid > 10 {
+		t.Errorf("covered %.3f, median bar/error %.1f; want 0.95 and at most 10", covered, mid)
+	}
+	if worst > 0.02 {
+		t.Errorf("an exponent of l <= 2 is off by %.3f", worst)
+	}
+}
