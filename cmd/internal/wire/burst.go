@@ -116,11 +116,20 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 		// followed for 150 M.
 		r.ends = th + 120 + r.n.domain.So
 	default:
+		// The source stops at the end of the path: what that sends out arrives
+		// later than anything that is used.
 		_, t1 := w.Span()
-		r.ends = t1 + r.n.domain.So
+		var s worldline.State
+		w.At(t1, &s)
+		r.ends = t1 - s.Rstar - source.NewKernel(r.n.widest, r.n.moments).Reach() + r.n.domain.So
 	}
+	var start worldline.State
+	w.At(0, &start)
 	for _, lm := range c.ModeList() {
 		m := newLadder(lm[0], lm[1])
+		if start.L == 0 && m.parity == equations.Odd {
+			continue // a radial fall excites even modes only
+		}
 		m.mov = &movingMode{}
 		m.allow = [2]float64{r.asked, r.asked}
 		m.rung = r.startRung()
@@ -171,10 +180,7 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	for _, m := range r.modes {
 		m.until = 0
 	}
-	// The start-up is over when the ramp is, or later when its residue is still
-	// falling and there is time before the event to wait for it.
-	r.after = math.Min(r.n.ramp.Centre+3*r.n.ramp.Width, r.event-40)
-	r.after = math.Max(r.after, r.event-120)
+	r.after = r.quietAt()
 	all := r.modes
 	r.modes = leading(all)
 	if err := r.run(ctx); err != nil {
@@ -196,6 +202,30 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 }
 
 func (r *burstRun) worldline() worldline.Worldline { return r.path }
+
+// quietAt is the retarded time from which numbers count: the particle has come
+// to full strength there, the strongest modes' residue of the start-up has
+// stopped mattering or there is no more time to wait before the event.
+func (r *burstRun) quietAt() float64 {
+	var s worldline.State
+	on := r.n.ramp.Centre + 2.5*r.n.ramp.Width
+	r.path.At(on, &s)
+	first := on - s.Rstar + 20
+	r.path.At(r.event, &s)
+	last := r.event - math.Max(s.Rstar, 0) - 60
+	if last <= first {
+		return first
+	}
+	// Wait until the residue is a third of what is asked for, if there is time.
+	after := first
+	for _, m := range leading(r.modes) {
+		j := r.starts[m]
+		for after < last && j.at(0, after+r.n.domain.So) > r.asked/3*j.peak[0] {
+			after += 2
+		}
+	}
+	return math.Min(after, last)
+}
 
 // force implements kind.
 func (r *burstRun) force(modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {

@@ -340,6 +340,9 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 				d := make([]float64, len(a))
 				for k := range a {
 					d[k] = cmplx.Abs(a[k] - b[k])
+					if float64(k)*s.dt > r.n.on()+r.n.domain.So {
+						s.peak[e] = math.Max(s.peak[e], cmplx.Abs(a[k]))
+					}
 				}
 				// What has died away does not come back: the envelope falls.
 				for k := len(d) - 2; k >= 0; k-- {
@@ -363,8 +366,9 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 
 // junkSeries is the falling envelope of what a later switch-on changes in Psi.
 type junkSeries struct {
-	dt  float64
-	psi [2][]float64
+	dt   float64
+	psi  [2][]float64
+	peak [2]float64 // of |Psi| after the switch-on, on the coarsest rung
 }
 
 // at is the envelope at slice tau.
