@@ -386,6 +386,8 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
 	}
 	sumModes(c, res, total)
+	r.peaks(res)
+	r.kick(res)
 	verdict(c, res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)
