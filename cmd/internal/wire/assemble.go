@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"slices"
 	"sort"
 	"strings"
 
@@ -137,7 +138,11 @@ func sumModes(c *configs.Case, res *result.Result, measure string) {
 	}
 	tail := func(end func(*result.Mode) *result.Flux, margin float64) (*result.Flux, bool) {
 		e, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).Energy.Value }), margin)
-		l, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value }), margin)
+		spin := byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value })
+		l, ok2 := flux.Tail(spin, margin)
+		if !slices.ContainsFunc(spin, func(x float64) bool { return x != 0 }) {
+			ok2 = true // a radial fall carries none in any mode
+		}
 		return &result.Flux{Energy: e, AngularMomentum: l}, ok1 && ok2
 	}
 	if total.Horizon == nil {
