@@ -205,7 +205,7 @@ func (r *burstRun) worldline() worldline.Worldline { return r.path }
 
 // quietAt is the retarded time from which numbers count: the particle has come
 // to full strength there, the strongest modes' residue of the start-up has
-// stopped mattering or there is no more time to wait before the event.
+// stopped mattering for the energy, or there is no more time to wait before the event.
 func (r *burstRun) quietAt() float64 {
 	var s worldline.State
 	on := r.n.ramp.Centre + 2.5*r.n.ramp.Width
@@ -216,11 +216,12 @@ func (r *burstRun) quietAt() float64 {
 	if last <= first {
 		return first
 	}
-	// Wait until the residue is a third of what is asked for, if there is time.
+	// Wait until what the residue adds to the radiated energy is a third of what
+	// is asked for, if there is time.
 	after := first
 	for _, m := range leading(r.modes) {
 		j := r.starts[m]
-		for after < last && j.at(0, after+r.n.domain.So) > r.asked/3*j.peak[0] {
+		for after < last && j.energy(0, after+r.n.domain.So, j.sent[0]) > r.asked/3*j.sent[0] {
 			after += 2
 		}
 	}
@@ -239,6 +240,19 @@ func (r *burstRun) stride(*ladder) float64     { return 1 }
 // quiet implements kind: the end is fixed by the orbit.
 func (r *burstRun) quiet(*certify.Samples, *ladder, float64, int) bool { return true }
 
+// strainFrom is the retarded time from which the strain must reach what was
+// asked: a driven inspiral counts from the end of its start-up, the other
+// transients from shortly before their event (the residue of the start-up has a
+// bar at every sample in any case).
+func (r *burstRun) strainFrom() float64 {
+	if r.path.Kind() == configs.Inspiral {
+		return r.after
+	}
+	var s worldline.State
+	r.path.At(r.event, &s)
+	return math.Max(r.after, r.event-math.Max(s.Rstar, 0)-60)
+}
+
 // certify implements kind: the strain against its peak, and the radiated totals.
 func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 	m.met, m.why = true, ""
@@ -247,7 +261,7 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 	round := certify.RoundOff(m.points[m.rung], 1)
 	// The strain.
 	step := math.Max(0.5, m.runs[m.rung].Dt)
-	us := ladderOfTimes(step, r.after, d.Retarded(r.ends)-1)
+	us := ladderOfTimes(step, r.strainFrom(), d.Retarded(r.ends)-1)
 	w, bars, diff := r.sampled(m, certify.Infinity, d.Retarded(0), us, step)
 	peak, worst, worstDisc := 0.0, 0.0, 0.0
 	for i := range w {
@@ -293,12 +307,7 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 			}
 			return left * v
 		}
-		// What the start-up adds: twice the field times its residue, integrated;
-		// the residue of Psi_tau is at most that of Psi per M.
-		res := r.starts[m].at(e, from)
-		span := until - from
-		size := math.Sqrt(x[0].Power / span)
-		start := (2*size + res) * res * span * 0.1
+		start := r.starts[m].energy(e, from, x[0].Power)
 		dr, dphi := r.path.Uncertainty()
 		path := 2*dr + 2*float64(m.m)*dphi
 		f.energyBar = certify.Budget{
@@ -377,6 +386,8 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
 	}
 	sumModes(c, res, total)
+	r.peaks(res)
+	r.kick(res)
 	verdict(c, res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)
