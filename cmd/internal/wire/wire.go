@@ -135,6 +135,10 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
+	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
+		return planBound(c, choose(c))
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return planBurst(c, choose(c))
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
