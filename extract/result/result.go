@@ -60,7 +60,7 @@ type Peak struct {
 	Frequency          Q            `json:"frequency"`
 	AmplitudeCurvature Q            `json:"amplitude_curvature"`
 	FrequencySlope     Q            `json:"frequency_slope"`
-	Delay              *Q           `json:"delay,omitempty"`          // U minus the time of the peak orbital frequency
+	Delay              *Q           `json:"delay,omitempty"`         // U minus the time of the peak orbital frequency
 	AtLightRing        map[string]Q `json:"at_light_ring,omitempty"` // amplitude, frequency, … at u = light-ring crossing
 }
 
