@@ -55,7 +55,7 @@ func (q Teukolsky) At(p hyperboloidal.KerrPoint) TeukolskyCoefficients {
 	axx := -x2 * p.D
 	bx := complex(-2*(1+s)*x+(6+2*s)*x2-4*a2*x2*x, 2*m*a*x2)
 	var b float64
-	if p.Where == hyperboloidal.Inner {
+	if p.Where == hyperboloidal.InnerPart {
 		r := 1 / x
 		b = 4*s*r - 2*s*p.B*(r-1)
 	} else {
@@ -68,7 +68,7 @@ func (q Teukolsky) At(p hyperboloidal.KerrPoint) TeukolskyCoefficients {
 		At:  complex(b+x2*p.Cx+2*x*p.C-2*a2*x, 2*m*a*(p.B-1)),
 		V:   complex(2*(1+s)*x-2*a2*x2, 2*m*a*x),
 	}
-	if p.Where != hyperboloidal.Flat {
+	if p.Where != hyperboloidal.FlatPart {
 		c.Axt = -2 * (1 + a2*x2 - x2*p.C) / p.X1
 	}
 	return c

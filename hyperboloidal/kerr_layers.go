@@ -57,9 +57,9 @@ type Region uint8
 
 // The parts of a slicing, from the horizon outwards.
 const (
-	Inner Region = iota
-	Flat
-	Outer
+	InnerPart Region = iota
+	FlatPart
+	OuterPart
 )
 
 // KerrPoint is the geometry of a slicing at one value of rho. A prime is
@@ -100,7 +100,7 @@ func (s KerrLayers) at(rho float64, inverse func(float64) float64) KerrPoint {
 	p := KerrPoint{Rho: rho}
 	switch {
 	case rho > s.Ro:
-		p.Where = Outer
+		p.Where = OuterPart
 		t := s.tortoiseJet(rho, inverse)
 		t[0] += h.rp
 		x := s.profile((rho-s.Ro)/(s.So-s.Ro), (rho-s.So)/(s.So-s.Ro), 1/(s.So-s.Ro)).over(t)
@@ -115,7 +115,7 @@ func (s KerrLayers) at(rho float64, inverse func(float64) float64) KerrPoint {
 		p.B = (2*(1+a2*p.X*p.X) - p.X*p.X*p.C) / p.D
 		return p
 	case rho >= s.Ri:
-		p.Where = Flat
+		p.Where = FlatPart
 		y := s.tortoiseJet(rho, inverse)
 		p.fromY(h, y)
 		kay, delta := h.kay(p.Y), h.delta(p.Y)
@@ -123,7 +123,7 @@ func (s KerrLayers) at(rho float64, inverse func(float64) float64) KerrPoint {
 		r := h.rp + p.Y
 		p.Cx = -2 * r * r * r
 	default:
-		p.Where = Inner
+		p.Where = InnerPart
 		o := s.profile((s.Ri-rho)/(s.Ri-s.Si), (s.Si-rho)/(s.Ri-s.Si), -1/(s.Ri-s.Si))
 		y := o.times(s.tortoiseJet(rho, inverse))
 		if s.Slope > 0 {
@@ -173,7 +173,7 @@ func (s KerrLayers) Rho(y float64) float64 {
 		}
 		p := s.Along(mid)
 		less := p.Y < y
-		if p.Where == Outer {
+		if p.Where == OuterPart {
 			less = p.X > x
 		}
 		if less {
@@ -191,9 +191,9 @@ func (s KerrLayers) Rho(y float64) float64 {
 func (s KerrLayers) Height(rho float64) float64 {
 	p := s.At(rho)
 	switch p.Where {
-	case Outer:
+	case OuterPart:
 		return rho - s.Hole.Tortoise(p.Y)
-	case Inner:
+	case InnerPart:
 		return s.Hole.Tortoise(p.Y) - rho
 	}
 	return 0
