@@ -5,49 +5,8 @@ import (
 	"math/cmplx"
 
 	"nullmark/hyperboloidal"
+	"nullmark/source/worldline"
 )
-
-// KerrParticle is a point mass mu = 1 at one instant, in coordinates regular
-// through the future horizon.
-type KerrParticle struct {
-	R          float64 // Boyer–Lindquist radius
-	Cos, Sin   float64 // of the polar angle
-	Phi        float64 // ingoing azimuth phi~
-	Wr, Wtheta float64 // Sigma dr/d(proper time) and Sigma dtheta/d(proper time)
-	E, L, Q    float64 // energy, angular momentum, Carter's constant
-}
-
-// carter returns K_C = Q + (L - a E)^2.
-func (k KerrParticle) carter(a float64) float64 {
-	d := k.L - a*k.E
-	return k.Q + d*d
-}
-
-// ingoing returns N = v' - a sin^2 phi~' = (P + Sigma r')/Delta with
-// P = E (r^2+a^2) - a L, in the form that stays finite at the horizon when the
-// particle falls inwards.
-func (k KerrParticle) ingoing(a float64) float64 {
-	p := k.E*(k.R*k.R+a*a) - a*k.L
-	if k.Wr <= 0 {
-		return (k.R*k.R + k.carter(a)) / (p - k.Wr)
-	}
-	return (p + k.Wr) / (k.R*k.R - 2*k.R + a*a)
-}
-
-// SigmaTau returns Sigma d tau/d(proper time) on a slicing with the given B,
-// Sigma v' - B Sigma r' with Sigma v' = K N + a (L - a E sin^2).
-func (k KerrParticle) SigmaTau(a, b float64) float64 {
-	return (k.R*k.R+a*a)*k.ingoing(a) + a*(k.L-a*k.E*k.Sin*k.Sin) - b*k.Wr
-}
-
-// SigmaPhi returns Sigma d phi~/d(proper time) = a N + L/sin^2 - a E.
-func (k KerrParticle) SigmaPhi(a float64) float64 {
-	l := 0.0
-	if k.L != 0 {
-		l = k.L / (k.Sin * k.Sin)
-	}
-	return a*k.ingoing(a) + l - a*k.E
-}
 
 // The derivatives d_tau^j d_x^k of the projected source in the order in which
 // Projection stores them.
@@ -163,7 +122,7 @@ type geometryJets struct {
 	x, q, qb, q4, p, weight, b jet
 }
 
-func newGeometryJets(a float64, k KerrParticle, at hyperboloidal.KerrPoint) geometryJets {
+func newGeometryJets(a float64, k worldline.KerrState, at hyperboloidal.KerrPoint) geometryJets {
 	x := jet{v: complex(at.X, 0), x: 1}
 	r := x.inverse()
 	q := r
@@ -193,7 +152,7 @@ func newGeometryJets(a float64, k KerrParticle, at hyperboloidal.KerrPoint) geom
 //	J = -x^2 d_x - B d_tau,  L_n = d_theta + m/sin - i a sin d_tau + n cot,
 //	q = r - i a cos,  p = q^4/qb^2,  D = delta^3/(Sigma sin u^tau),
 //	Th = Sigma theta' + i sin (a E - L/sin^2).
-func ProjectMinus2(a float64, k KerrParticle, at hyperboloidal.KerrPoint) Projection {
+func ProjectMinus2(a float64, k worldline.KerrState, at hyperboloidal.KerrPoint) Projection {
 	g := newGeometryJets(a, k, at)
 	shift := complex(0, -a)
 	jf := g.x.times(g.x).scaled(-1)
@@ -202,8 +161,8 @@ func ProjectMinus2(a float64, k KerrParticle, at hyperboloidal.KerrPoint) Projec
 	var start tableau
 	start[0][0][0] = g.weight.scaled(complex(math.Pi, 0))
 
-	n := complex(k.ingoing(a), 0)
-	th := complex(k.Wtheta, k.twist(a))
+	n := complex(k.Ingoing(a), 0)
+	th := complex(k.Wtheta, k.Twist(a))
 	qb := g.qb.v
 	pre := complex(at.X*at.X/k.SigmaTau(a, at.B), 0)
 	z1 := pre * n * n / qb
@@ -220,22 +179,13 @@ func ProjectMinus2(a float64, k KerrParticle, at hyperboloidal.KerrPoint) Projec
 	return out
 }
 
-// twist returns sin (a E - L/sin^2), the imaginary part of Th.
-func (k KerrParticle) twist(a float64) float64 {
-	t := a * k.E * k.Sin
-	if k.L != 0 {
-		t -= k.L / k.Sin
-	}
-	return t
-}
-
 // ProjectPlus2 is ProjectMinus2 for s = +2 (psi0), at azimuthal number m:
 //
 //	S = -4 pi r q^-3 { Ld_-1[q^4 Ld_0(W^2 D/qb)] + Ld_-1[p (cD-Delta')(qb W Thb D)]
 //	     + (cD-Delta')[p Ld_-1(qb W Thb D)] + (cD-Delta')[q^4 cD(Thb^2 D/qb)] },
 //	W = P - Sigma r',  Thb = conj(Th),  Ld_n = d_theta - m/sin + i a sin d_tau + n cot,
 //	cD = -d d_x + C d_tau + 2 i m a,  Delta' = 2 r - 2.
-func ProjectPlus2(a float64, m int, k KerrParticle, at hyperboloidal.KerrPoint) Projection {
+func ProjectPlus2(a float64, m int, k worldline.KerrState, at hyperboloidal.KerrPoint) Projection {
 	g := newGeometryJets(a, k, at)
 	shift := complex(0, a)
 	r := g.x.inverse()
@@ -250,8 +200,8 @@ func ProjectPlus2(a float64, m int, k KerrParticle, at hyperboloidal.KerrPoint) 
 	var start tableau
 	start[0][0][0] = g.weight.scaled(complex(-4*math.Pi, 0))
 
-	w := complex(k.outgoing(a), 0)
-	th := complex(k.Wtheta, -k.twist(a))
+	w := complex(k.Outgoing(a), 0)
+	th := complex(k.Wtheta, -k.Twist(a))
 	qb := g.qb.v
 	pre := complex(at.X*at.X/k.SigmaTau(a, at.B), 0)
 	z1 := pre * w * w / qb
@@ -266,15 +216,6 @@ func ProjectPlus2(a float64, m int, k KerrParticle, at hyperboloidal.KerrPoint) 
 	out.accumulate(two.times(g.p).angular(shift), z2, k.Sin, 1)
 	out.accumulate(two.times(g.q4).radial(df, c, ima), z4, k.Sin, 0)
 	return out
-}
-
-// outgoing returns W = P - Sigma r' = Delta (r^2+K_C)/(P + Sigma r').
-func (k KerrParticle) outgoing(a float64) float64 {
-	p := k.E*(k.R*k.R+a*a) - a*k.L
-	if k.Wr <= 0 {
-		return p - k.Wr
-	}
-	return (k.R*k.R - 2*k.R + a*a) * (k.R*k.R + k.carter(a)) / (p + k.Wr)
 }
 
 // HarmonicLadder fills h[i], i = 0, 1, 2, with the harmonics that the weights

@@ -1,0 +1,131 @@
+package worldline
+
+import (
+	"math"
+	"testing"
+
+	"nullmark/hyperboloidal"
+)
+
+func kerrHole(t *testing.T, a float64) hyperboloidal.Kerr {
+	t.Helper()
+	h, err := hyperboloidal.NewKerr(a)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return h
+}
+
+func near(t *testing.T, what string, got, want, tol float64) {
+	t.Helper()
+	if d := math.Abs(got - want); !(d <= tol*math.Max(math.Abs(want), 1e-300)) {
+		t.Errorf("%s = %.15g, want %.15g (relative %.1e, allowed %.1e)", what, got, want, d/math.Abs(want), tol)
+	}
+}
+
+// Frequency-domain reference of an inclined circular orbit, a = 0.9, r = 6, 30
+// degrees, computed for this project, 12 digits.
+func TestKerrInclinedConstants(t *testing.T) {
+	h := kerrHole(t, 0.9)
+	o, err := NewKerrBound(h, 6, 0, math.Cos(math.Pi/6), 0, 0, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "E", o.E, 0.924109612515, 1e-12)
+	near(t, "L", o.L, 2.47345309612, 2e-12)
+	near(t, "Q", o.Q, 2.03932340624, 2e-12)
+	near(t, "Omega_theta", o.OmegaTheta, 0.0588691247828, 2e-12)
+	near(t, "Omega_phi", o.OmegaPhi, 0.0650980853265, 2e-12)
+}
+
+// Exact formulas: Schwarzschild constants of (p, e), the separatrix p = 6 + 2e,
+// and the frequencies of p = 7.50478, e = 0.188917 (C. Cutler, D. Kennefick, E.
+// Poisson, PRD 50, 3816 (1994), recomputed to more digits).
+func TestKerrBoundAtZeroSpin(t *testing.T) {
+	h := kerrHole(t, 0)
+	p, e := 7.50478, 0.188917
+	for _, c := range []float64{1, 0.6, -0.3} {
+		o, err := NewKerrBound(h, p, e, c, 0, 0, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		near(t, "E", o.E, math.Sqrt(((p-2)*(p-2)-4*e*e)/(p*(p-3-e*e))), 1e-14)
+		near(t, "L^2+Q", o.L*o.L+o.Q, p*p/(p-3-e*e), 1e-14)
+		near(t, "Omega_r", o.OmegaR, 0.0210558078, 5e-9)
+		near(t, "Omega_phi", o.OmegaPhi, math.Copysign(0.0475982489, c), 5e-9)
+		near(t, "Omega_theta", o.OmegaTheta, 0.0475982489, 5e-9)
+		near(t, "separatrix", KerrSeparatrix(h, e, c), 6+2*e, 1e-12)
+	}
+}
+
+// ISCO values of Bardeen, Press and Teukolsky (1972).
+func TestKerrISCO(t *testing.T) {
+	for _, c := range []struct{ a, r, e, w float64 }{
+		{0.5, 4.23300252953, 0.917882006661, 0.10858835898},
+		{0.9, 2.32088304176, 0.844247008006, 0.225441708835},
+	} {
+		h := kerrHole(t, c.a)
+		near(t, "ISCO", h.ISCO(), c.r, 1e-11)
+		k, w, err := CircularKerr(h, c.r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		near(t, "E", k.E, c.e, 1e-11)
+		near(t, "Omega", w, c.w, 1e-11)
+		// the separatrix at e = 0 is the ISCO; there dE/dr vanishes, so only half the digits are left
+		near(t, "separatrix", KerrSeparatrix(h, 0, 1), h.ISCO(), 1e-6)
+		near(t, "photon orbit", KerrPhotonOrbit(h, 1), h.LightRing(), 1e-9)
+		near(t, "retrograde photon orbit", KerrPhotonOrbit(h, -1), kerrHole(t, -c.a).LightRing(), 1e-9)
+	}
+}
+
+// The states obey the first-order geodesic equations, written without the
+// series: Sigma^2 r'^2 = P^2 - Delta (r^2+K_C), and dt, dphi by differences.
+func TestKerrBoundObeysGeodesic(t *testing.T) {
+	for _, c := range []struct{ a, p, e, ci float64 }{
+		{0.9, 4.64, 0.3, 1}, {0.9, 11, 0.7, -0.8}, {-0.5, 12, 0.2, 0.3}, {0.7, 8, 0, 0.5}, {0.99, 3, 0.5, 0.95},
+	} {
+		h := kerrHole(t, c.a)
+		o, err := NewKerrBound(h, c.p, c.e, c.ci, 0.4, 1.1, 0.2)
+		if err != nil {
+			t.Fatal(err)
+		}
+		const dt = 0.01
+		for _, tm := range []float64{-30, 0, 17.3, 400} {
+			s, _ := o.At(tm)
+			pp := s.E*(s.R*s.R+c.a*c.a) - c.a*s.L
+			d := s.R*s.R - 2*s.R + c.a*c.a
+			near(t, "R", s.Wr*s.Wr/(pp*pp)+d*(s.R*s.R+s.Carter(c.a))/(pp*pp), 1, 1e-12)
+			tw := s.Twist(c.a)
+			near(t, "Theta", s.Wtheta*s.Wtheta+tw*tw+c.a*c.a*s.Cos*s.Cos, s.Carter(c.a), 1e-12)
+			b := (s.R*s.R + c.a*c.a) / d
+			st := s.SigmaTau(c.a, b)
+			diff := func(f func(KerrState) float64) float64 {
+				g := func(x float64) float64 { v, _ := o.At(tm + x); return f(v) }
+				return (8*(g(dt)-g(-dt)) - (g(2*dt) - g(-2*dt))) / (12 * dt)
+			}
+			if got, want := diff(func(k KerrState) float64 { return k.R }), s.Wr/st; math.Abs(got-want) > 1e-9 {
+				t.Errorf("%+v: dr/dt %g, want %g", c, got, want)
+			}
+			if got, want := diff(func(k KerrState) float64 { return k.Phi }), s.SigmaPhi(c.a)/st; math.Abs(got-want) > 1e-9 {
+				t.Errorf("%+v: dphi/dt %g, want %g", c, got, want)
+			}
+			if got, want := diff(func(k KerrState) float64 { return math.Acos(k.Cos) }), s.Wtheta/st; math.Abs(got-want) > 1e-9 {
+				t.Errorf("%+v: dtheta/dt %g, want %g", c, got, want)
+			}
+		}
+	}
+}
+
+func TestKerrOrbitsRefused(t *testing.T) {
+	h := kerrHole(t, 0.9)
+	if _, _, err := CircularKerr(h, 1.5); err == nil {
+		t.Error("circular orbit inside the light ring accepted")
+	}
+	if _, err := NewKerrBound(h, 2.4, 0.3, 1, 0, 0, 0); err == nil {
+		t.Error("orbit below the separatrix accepted")
+	}
+	if _, err := NewKerrBound(h, 8, 1.1, 1, 0, 0, 0); err == nil {
+		t.Error("unbound orbit accepted")
+	}
+}
