@@ -64,8 +64,8 @@ func lowestHarmonic(s, m, l int, theta float64) float64 {
 	case -m:
 		return sign(s) * norm(l+s) * pow(c, l+s) * pow(n, l-s)
 	case -s:
-		return norm(l+m) * pow(c, l+m) * pow(n, l-m)
+		return sign(l) * norm(l+m) * pow(c, l+m) * pow(n, l-m)
 	default: // l == s
-		return sign(l+m) * norm(l-m) * pow(c, l-m) * pow(n, l+m)
+		return sign(m) * norm(l-m) * pow(c, l-m) * pow(n, l+m)
 	}
 }
