@@ -1,0 +1,255 @@
+package wire
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+	"sort"
+	"strings"
+
+	"nullmark/configs"
+	"nullmark/equations"
+	"nullmark/extract/certify"
+	"nullmark/extract/flux"
+	"nullmark/extract/result"
+	"nullmark/extract/strain"
+	"nullmark/hyperboloidal"
+
+	"go.yaml.in/yaml/v3"
+)
+
+const (
+	bothSigns = "both signs of m"
+	rate      = "rate"
+)
+
+// assemble turns finished ladders into the data of a result.
+func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
+	tree, err := caseTree(c)
+	if err != nil {
+		return nil, err
+	}
+	res := &result.Result{
+		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
+		Orbit: r.describe(), Warnings: append([]string{}, Warnings(c)...),
+	}
+	index := map[int]int{}
+	var ks []int
+	for k := range r.rungs {
+		ks = append(ks, k)
+	}
+	sort.Ints(ks)
+	for i, k := range ks {
+		index[k] = i
+		g := *r.rungs[k]
+		var names []string
+		for n := range r.members[k] {
+			names = append(names, n)
+		}
+		sort.Strings(names)
+		g.Modes = strings.Join(names, " ")
+		res.Rungs = append(res.Rungs, g)
+	}
+	for _, m := range r.modes {
+		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
+	}
+	r.totals(c, res)
+	r.verdict(c, res)
+	return &result.Bundle{Result: res, Series: r.series(c)}, nil
+}
+
+// caseTree is the resolved case as plain maps and lists.
+func caseTree(c *configs.Case) (any, error) {
+	text, err := c.YAML()
+	if err != nil {
+		return nil, err
+	}
+	var tree any
+	if err := yaml.Unmarshal(text, &tree); err != nil {
+		return nil, err
+	}
+	return tree, nil
+}
+
+func (r *circularRun) describe() *result.Orbit {
+	o := r.orbit
+	return &result.Orbit{
+		Kind: configs.Circular, Energy: o.energy, AngMom: o.angmom,
+		Numbers: map[string]float64{
+			"radius": o.r0, "rstar": o.rstar, "omega_phi": o.omega, "period_phi": 2 * math.Pi / o.omega,
+			"x": math.Pow(o.omega, 2.0/3), "horizon_radius": hyperboloidal.Horizon,
+			"light_ring_radius": hyperboloidal.LightRing, "isco_radius": hyperboloidal.ISCORadius,
+		},
+	}
+}
+
+func (r *circularRun) entry(m *ladder, rung int) result.Mode {
+	t := m.mode.tone
+	inf, hor := m.bars[certify.Infinity], m.bars[certify.Horizon]
+	out := result.Mode{
+		L: t.L, M: t.M, Parity: parityName(m.mode.parity), Measure: rate, Counts: bothSigns,
+		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Infinity]), inf.Bar()),
+		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Horizon]), hor.Bar()),
+		Met:      m.met, Why: m.why, Rung: rung,
+		Budget: map[string]float64{
+			"discretisation": inf.Discretisation, "transient": inf.Transient, "round-off": inf.RoundOff,
+			"horizon discretisation": hor.Discretisation, "horizon transient": hor.Transient,
+		},
+	}
+	h := r.strainAmplitude(m)
+	bar := cmplx.Abs(h) * inf.Bar()
+	out.Strain = &result.Complex{Re: result.Q{Value: real(h), Error: bar}, Im: result.Q{Value: imag(h), Error: bar}}
+	return out
+}
+
+// strainAmplitude is r h_lm e^{i m phi_p(u)}/mu: with u = tau - So the tone
+// Z e^{-i omega tau} is Z e^{-i omega So} e^{-i omega u}.
+func (r *circularRun) strainAmplitude(m *ladder) complex128 {
+	return strain.Factor(m.mode.tone.L, m.mode.parity == equations.Odd) *
+		m.z[certify.Infinity] * cmplx.Exp(complex(0, -m.mode.tone.Omega*r.n.domain.So))
+}
+
+func (r *circularRun) totals(c *configs.Case, res *result.Result) {
+	var inf, hor []*result.Flux
+	for i := range res.Modes {
+		inf = append(inf, res.Modes[i].Infinity)
+		hor = append(hor, res.Modes[i].Horizon)
+	}
+	total := &result.Total{Measure: rate, Infinity: flux.Sum(inf...), Horizon: flux.Sum(hor...)}
+	res.Total = total
+	for m := 1; m <= c.Waves.LMax; m++ {
+		var a, b []*result.Flux
+		for i := range res.Modes {
+			if res.Modes[i].M == m {
+				a, b = append(a, res.Modes[i].Infinity), append(b, res.Modes[i].Horizon)
+			}
+		}
+		if len(a) > 0 {
+			res.PerM = append(res.PerM, result.PerM{M: m, Infinity: flux.Sum(a...), Horizon: flux.Sum(b...)})
+		}
+	}
+	if len(c.Waves.Modes) > 0 {
+		total.Truncation = &result.Truncation{LMax: c.Waves.LMax, Note: "only the listed modes are summed; no tail is estimated"}
+		return
+	}
+	t := &result.Truncation{LMax: c.Waves.LMax}
+	total.Truncation = t
+	byL := func(pick func(*result.Mode) float64) []float64 {
+		out := make([]float64, c.Waves.LMax+1)
+		for i := range res.Modes {
+			out[res.Modes[i].L] += pick(&res.Modes[i])
+		}
+		return out[2:]
+	}
+	ei, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Infinity.Energy.Value }), 0)
+	eh, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Horizon.Energy.Value }), 0.02)
+	if !ok1 || !ok2 {
+		t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
+		res.Warnings = append(res.Warnings, t.Note)
+		return
+	}
+	// On a circular orbit dE = Omega dL mode by mode, so also in the tail.
+	t.Infinity = tailFlux(ei, r.orbit.omega)
+	t.Horizon = tailFlux(eh, r.orbit.omega)
+	total.Infinity = flux.Sum(total.Infinity, t.Infinity)
+	total.Horizon = flux.Sum(total.Horizon, t.Horizon)
+}
+
+func tailFlux(e result.Q, omega float64) *result.Flux {
+	return &result.Flux{Energy: e, AngularMomentum: result.Q{Value: e.Value / omega, Error: e.Error / omega}}
+}
+
+// verdict compares every bar with what was asked.
+func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
+	a := result.Accuracy{Asked: c.Accuracy.Relative, Floor: c.Accuracy.Floor, Met: true}
+	var largest [2]float64
+	ends := func(m *result.Mode) [2]*result.Flux { return [2]*result.Flux{m.Infinity, m.Horizon} }
+	for i := range res.Modes {
+		for e, f := range ends(&res.Modes[i]) {
+			largest[e] = math.Max(largest[e], f.Energy.Value)
+		}
+	}
+	for i := range res.Modes {
+		m := &res.Modes[i]
+		if !m.Met {
+			a.Met = false
+			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
+		}
+		for e, f := range ends(m) {
+			// A mode below the floor is held to the floor: the same fraction
+			// of the asked accuracy on the scale asked/floor.
+			scale := math.Max(f.Energy.Value, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			if rel := f.Energy.Error / scale; rel > a.Worst.Relative {
+				a.Worst = result.Worst{L: m.L, M: m.M, What: "energy at " + certify.End(e).String(), Relative: rel}
+			}
+		}
+	}
+	res.Accuracy = a
+}
+
+// series samples the strain and the horizon field every output.every.
+func (r *circularRun) series(c *configs.Case) *result.Series {
+	if len(r.modes) == 0 {
+		return nil
+	}
+	until := math.Inf(1)
+	for _, m := range r.modes {
+		until = math.Min(until, m.until)
+	}
+	d := r.n.domain
+	s := &result.Series{Prefix: "h", HorizonPrefix: "psi", JunkUntil: r.n.ramp.Centre + 3*r.n.ramp.Width + 60}
+	s.U = ladderOfTimes(c.Output.Every, 0, d.Retarded(until))
+	s.V = ladderOfTimes(c.Output.Every, math.Ceil(d.Advanced(0)), d.Advanced(until))
+	for _, t := range s.U {
+		s.T = append(s.T, t)
+		s.R = append(s.R, r.orbit.r0)
+		s.Phi = append(s.Phi, r.orbit.omega*t)
+	}
+	for _, m := range r.modes {
+		s.Modes = append(s.Modes, r.modeSeries(m, s.U, s.V))
+	}
+	return s
+}
+
+// ladderOfTimes lists the multiples of step in [from, to].
+func ladderOfTimes(step, from, to float64) []float64 {
+	var out []float64
+	for k := math.Ceil(from / step); k*step <= to; k++ {
+		out = append(out, k*step)
+	}
+	return out
+}
+
+func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
+	t := m.mode.tone
+	fine := m.runs[m.rung]
+	fac := strain.Factor(t.L, m.mode.parity == equations.Odd)
+	d := r.n.domain
+	out := result.ModeSeries{L: t.L, M: t.M}
+	wave := func(s *certify.Samples) []complex128 {
+		w := strain.Resample(s.Psi[certify.Infinity], d.Retarded(0), s.Dt, u)
+		for i := range w {
+			w[i] *= fac
+		}
+		return w
+	}
+	out.Wave = wave(fine)
+	coarse := wave(m.runs[m.rung-1])
+	out.Horizon = strain.Resample(fine.Psi[certify.Horizon], d.Advanced(0), fine.Dt, v)
+	// The truth is the steady signal: what a sample still carries of the
+	// start-up is its distance from that, on top of the amplitude's own bar.
+	h := r.strainAmplitude(m)
+	bar := cmplx.Abs(h) * m.bars[certify.Infinity].Bar()
+	for i, t0 := range u {
+		steady := h * cmplx.Exp(complex(0, -t.Omega*t0))
+		out.WaveErr = append(out.WaveErr, cmplx.Abs(out.Wave[i]-steady)+bar)
+		out.Evidence = append(out.Evidence, cmplx.Abs(out.Wave[i]-coarse[i]))
+	}
+	zh := m.z[certify.Horizon]
+	barH := cmplx.Abs(zh) * m.bars[certify.Horizon].Bar()
+	for i, t0 := range v {
+		steady := zh * cmplx.Exp(complex(0, -t.Omega*(t0-d.Si)))
+		out.HorizonErr = append(out.HorizonErr, cmplx.Abs(out.Horizon[i]-steady)+barH)
+	}
+	return out
+}

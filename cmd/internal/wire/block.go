@@ -1,0 +1,126 @@
+package wire
+
+import (
+	"bytes"
+	"context"
+	"encoding/gob"
+	"errors"
+	"fmt"
+	"math"
+	"time"
+
+	"nullmark/equations"
+	"nullmark/equations/evolve"
+	"nullmark/equations/semi"
+	"nullmark/extract/certify"
+	"nullmark/extract/sample"
+	"nullmark/grid"
+	"nullmark/grid/march"
+	"nullmark/source"
+)
+
+// blockModes is how many complex modes one block carries.
+const blockModes = grid.Lanes / 2
+
+// circularMode is one mode of a circular orbit: its tone and source amplitudes.
+type circularMode struct {
+	tone   certify.Tone
+	parity equations.Parity
+	f, g   float64
+}
+
+// blockRun is what one evolution of a block on one rung left behind.
+type blockRun struct {
+	Samples []certify.Samples // one a mode
+	Until   float64
+	Points  int
+	Dx, Dt  float64
+	Seconds float64
+}
+
+// evolveBlock evolves up to blockModes modes on rung k. It runs to until, and
+// further in steps while more says so (more may be nil). Progress is reported
+// in point-steps.
+func (n *numerics) evolveBlock(ctx context.Context, modes []circularMode, rstar float64, k int, until float64, more func(s []certify.Samples, until float64) (next float64), progress func(done float64)) (*blockRun, error) {
+	start := time.Now()
+	g := n.grid(k)
+	geo, err := semi.NewGeometry(n.domain, g, n.order)
+	if err != nil {
+		return nil, err
+	}
+	var f, gg, omega []float64
+	var pots []equations.Potential
+	for _, m := range modes {
+		f, gg, omega = append(f, m.f), append(gg, m.g), append(omega, m.tone.Omega)
+		p := equations.Master(m.parity, m.tone.L)
+		pots = append(pots, p, p)
+	}
+	kernel := source.NewKernel(n.cells*g.Dx, n.moments)
+	forcing := source.NewStationary(g.Rho(), rstar, kernel, n.ramp, f, gg, omega)
+	sys := semi.NewMaster(geo, pots, forcing)
+	stepper := march.NewTaylor(sys, n.taylor, sys.Length())
+	dt := n.courant * g.Dx
+	rec := sample.NewEnds(len(modes), grid.Lanes, dt, 0)
+	run := &evolve.Run{
+		Stepper: stepper, State: make([]float64, sys.Length()), Dt: dt,
+		Observers: []evolve.Observer{rec}, Limit: 1e8,
+		Locate: func(i int) (string, string) {
+			half := sys.Length() / 2
+			p := geo.Points[i%half/grid.Lanes]
+			mode := "an empty lane"
+			if q := i % grid.Lanes / 2; q < len(modes) {
+				mode = fmt.Sprintf("(%d,%d)", modes[q].tone.L, modes[q].tone.M)
+			}
+			return fmt.Sprintf("rho = %.6g (r = %.6g)", p.Rho, p.R), mode
+		},
+	}
+	for {
+		steps := int(math.Ceil(until/dt)) - run.Steps
+		rec.Grow(steps + 1)
+		for steps > 0 {
+			c := min(steps, 256)
+			if err := run.Advance(ctx, c); err != nil {
+				var fail *evolve.Failure
+				if errors.As(err, &fail) && n.courant*geo.SpectralRadius()*g.Dx > stepper.ImaginaryLimit() {
+					return nil, fmt.Errorf("numerics.courant %g is beyond the stability limit %.3g of this scheme: %w", n.courant, stepper.ImaginaryLimit()/(geo.SpectralRadius()*g.Dx), err)
+				}
+				return nil, err
+			}
+			steps -= c
+			progress(float64(c * g.N))
+		}
+		if more == nil {
+			break
+		}
+		next := more(rec.Modes, until)
+		if next <= until {
+			break
+		}
+		until = next
+	}
+	return &blockRun{Samples: rec.Modes, Until: until, Points: g.N, Dx: g.Dx, Dt: dt, Seconds: time.Since(start).Seconds()}, nil
+}
+
+// kept runs compute unless the keeper has its result under the key.
+func kept(keep Keeper, key string, compute func() (*blockRun, error)) (*blockRun, error) {
+	if keep != nil {
+		if data, ok := keep.Load(key); ok {
+			var b blockRun
+			if gob.NewDecoder(bytes.NewReader(data)).Decode(&b) == nil {
+				return &b, nil
+			}
+		}
+	}
+	b, err := compute()
+	if err != nil || keep == nil {
+		return b, err
+	}
+	var buf bytes.Buffer
+	if err := gob.NewEncoder(&buf).Encode(b); err != nil {
+		return nil, fmt.Errorf("checkpoint %s: %w", key, err)
+	}
+	if err := keep.Save(key, buf.Bytes()); err != nil {
+		return nil, fmt.Errorf("checkpoint %s: %w", key, err)
+	}
+	return b, nil
+}

@@ -1,0 +1,117 @@
+package wire
+
+import (
+	"math"
+
+	"nullmark/configs"
+	"nullmark/extract/certify"
+	"nullmark/grid"
+	"nullmark/hyperboloidal"
+	"nullmark/source"
+)
+
+// numerics is every choice of the scheme; tests vary what case files cannot.
+type numerics struct {
+	order      int
+	courant    float64 // dt/dx
+	taylor     int     // order in time
+	cells      float64 // kernel width in cells
+	moments    int
+	inner      float64 // thickness of the layers, M
+	outer      float64
+	gap        float64 // extra flat room on both sides of the kernel, M
+	profile    hyperboloidal.Profile
+	ramp       source.Ramp
+	rungs      int // how many rungs a bar is made from, 2 or 3
+	maxRung    int
+	fixedRung  int // >= 0: run exactly this rung as the finest, no climbing
+	points     int // > 0: points of the finest rung
+	until      float64
+	widest     float64 // kernel width that the flat part makes room for, M
+	domain     hyperboloidal.Layers
+	coarsestDx float64
+}
+
+// choose gives the numerics of a case: measured defaults, overridden by what
+// the case file says.
+func choose(c *configs.Case) numerics {
+	n := numerics{
+		order: 12, courant: 1.15, taylor: 12, cells: 1.9, moments: 16,
+		inner: 20, outer: 30, profile: hyperboloidal.Flat(2),
+		ramp: source.Ramp{Centre: 80, Width: 17}, rungs: 3, maxRung: 8, fixedRung: -1,
+	}
+	if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
+		n.outer = math.Max(n.outer, 1.6*c.Orbit.Radius)
+	}
+	m := c.Numerics
+	if m.Order != nil {
+		n.order = *m.Order
+	}
+	if m.Courant != nil {
+		n.courant = *m.Courant
+	}
+	if m.KernelMoments != nil {
+		n.moments = *m.KernelMoments
+		n.cells = defaultCells(n.moments)
+	}
+	if m.KernelWidth != nil {
+		n.cells = *m.KernelWidth
+	}
+	if m.Layer != nil {
+		n.inner = *m.Layer * n.inner / n.outer
+		n.outer = *m.Layer
+	}
+	if m.Rungs != nil {
+		n.rungs = *m.Rungs
+	}
+	if m.Points != nil {
+		n.points = *m.Points
+	}
+	if c.Span.Until != nil {
+		n.until = *c.Span.Until
+	}
+	return n
+}
+
+// defaultCells is the kernel width in cells below which aliasing takes over, by
+// the number of moments.
+func defaultCells(moments int) float64 {
+	switch {
+	case moments <= 8:
+		return 1.5
+	case moments <= 10:
+		return 1.6
+	case moments <= 12:
+		return 1.7
+	case moments <= 14:
+		return 1.8
+	}
+	return 1.9
+}
+
+// place fixes the domain for a particle at rest in r_* (a circular orbit): one
+// domain for all rungs, so that their amplitudes compare without a shift.
+func (n *numerics) place(rstar float64) {
+	n.coarsestDx = certify.CoarsestSpacing
+	n.widest = n.cells * n.coarsestDx
+	w := source.NewKernel(n.widest, n.moments).Reach() + n.gap
+	n.domain = hyperboloidal.Layers{Si: rstar - w - n.inner, Ri: rstar - w, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
+	if n.points > 0 {
+		// The asked points are those of the finest rung, which is rung
+		// rungs-1 of a ladder whose coarsest spacing follows.
+		n.fixedRung = n.rungs - 1
+		n.maxRung = n.fixedRung
+		dx := (n.domain.So - n.domain.Si) / float64(n.points-1)
+		n.coarsestDx = dx / math.Pow(certify.Ratio, float64(n.fixedRung))
+	}
+}
+
+// grid returns the grid of rung k.
+func (n *numerics) grid(k int) grid.Grid {
+	length := n.domain.So - n.domain.Si
+	dx := n.coarsestDx * math.Pow(certify.Ratio, float64(k))
+	return grid.New(n.domain.Si, n.domain.So, int(math.Round(length/dx))+1)
+}
+
+// on is the time at which the source has come to full strength.
+func (n *numerics) on() float64 { return n.ramp.Centre + 2*n.ramp.Width }

@@ -1,0 +1,16 @@
+// Command nullmark computes waveforms and fluxes of a small mass around a black
+// hole at null infinity and at the horizon, each number with an error bar.
+package main
+
+import (
+	"context"
+	"os"
+
+	"nullmark/cmd/internal/app"
+	"nullmark/cmd/internal/wire"
+)
+
+func main() {
+	engine := app.Engine{Checks: wire.Checks, Warnings: wire.Warnings, Plan: wire.MakePlan, Run: wire.Run}
+	os.Exit(app.Run(context.Background(), engine, os.Args[1:], os.Stdout, os.Stderr))
+}
