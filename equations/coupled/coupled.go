@@ -8,6 +8,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"nullmark/equations"
 	"nullmark/equations/evolve"
@@ -28,6 +29,7 @@ type Rung struct {
 	Kernel  float64 // width of the smoothed delta
 	Moments int
 	Order   int // of the differences
+	Taylor  int // order in time; a moving source carries it to 8
 	Angular int // l's carried at this m
 	Filter  int // 2q of the filter applied once a step, 0 = none
 	Ramp    source.Ramp
@@ -39,26 +41,52 @@ func (r Rung) Dx() float64 { return (r.Layers.So - r.Layers.Si) / float64(r.Poin
 // Equation names the field that is evolved.
 type Equation struct{ S, M int }
 
-// Fields are the samples of one evolution: sample k at slicing time k Dt, for
-// l = LMin + i the field Phi_l at null infinity in Infinity[i] and at the
-// horizon in Horizon[i].
+// The two ends of the grid, as indices of Fields: null infinity and the horizon.
+const (
+	Infinity = 0
+	Horizon  = 1
+)
+
+// Fields are the samples of one evolution: sample k belongs to slicing time
+// k Dt; Phi[end][i] and Pi[end][i] are the field of l = LMin + i and its time
+// derivative at one end of the grid.
 type Fields struct {
-	LMin              int
-	Dt                float64
-	Si, So            float64 // u = tau - So at infinity, v = tau + Si at the horizon
-	Infinity, Horizon [][]complex128
+	LMin    int
+	Dt      float64
+	Si, So  float64 // u = tau - So at null infinity, v = tau + Si at the horizon
+	Phi, Pi [2][][]complex128
 }
 
-// End is the last time sampled.
-func (f *Fields) End() float64 { return float64(len(f.Infinity[0])-1) * f.Dt }
+// Until is the time of the last sample.
+func (f *Fields) Until() float64 { return float64(len(f.Phi[0][0])-1) * f.Dt }
 
-// Observe implements evolve.Observer.
-func (f *Fields) observe(u []float64, points int) {
-	n := len(f.Infinity)
-	last := (points - 1) * 2 * n
-	for l := range n {
-		f.Horizon[l] = append(f.Horizon[l], complex(u[l], u[n+l]))
-		f.Infinity[l] = append(f.Infinity[l], complex(u[last+l], u[last+n+l]))
+func newFields(lmin, n int, r Rung) Fields {
+	f := Fields{LMin: lmin, Dt: r.Dt, Si: r.Layers.Si, So: r.Layers.So}
+	for e := range f.Phi {
+		f.Phi[e] = make([][]complex128, n)
+		f.Pi[e] = make([][]complex128, n)
+	}
+	return f
+}
+
+// grow makes room for steps more samples.
+func (f *Fields) grow(steps int) {
+	for e := range f.Phi {
+		for l := range f.Phi[e] {
+			f.Phi[e][l] = slices.Grow(f.Phi[e][l], steps)
+			f.Pi[e][l] = slices.Grow(f.Pi[e][l], steps)
+		}
+	}
+}
+
+// observe appends the two ends of the state [Phi][Pi], 2n numbers a point.
+func (f *Fields) observe(u []float64) {
+	n, half := len(f.Phi[0]), len(u)/2
+	for e, at := range [2]int{half - 2*n, 0} {
+		for l := range n {
+			f.Phi[e][l] = append(f.Phi[e][l], complex(u[at+l], u[at+n+l]))
+			f.Pi[e][l] = append(f.Pi[e][l], complex(u[half+at+l], u[half+at+n+l]))
+		}
 	}
 }
 
@@ -106,19 +134,13 @@ func Moving(q Equation, r Rung, track source.KerrTrack) (*Run, error) {
 	return start(geo, r, source.NewTeukolskyMoving(carrier(geo), track, kern, r.Ramp)), nil
 }
 
-const taylorOrder = 8
-
 func start(geo *semi.CoupledGeometry, r Rung, forcing semi.Forcing) *Run {
 	run := &Run{geo: geo}
-	n := geo.Modes
-	run.Fields = Fields{
-		LMin: geo.Coupling.LMin, Dt: r.Dt, Si: r.Layers.Si, So: r.Layers.So,
-		Infinity: make([][]complex128, n), Horizon: make([][]complex128, n),
-	}
+	run.Fields = newFields(geo.Coupling.LMin, geo.Modes, r)
 	sys := semi.NewCoupled(geo, forcing)
 	length := geo.Length()
 	run.inner = evolve.Run{
-		Stepper: march.NewTaylor(sys, taylorOrder, length),
+		Stepper: march.NewTaylor(sys, r.Taylor, length),
 		State:   make([]float64, length),
 		Dt:      r.Dt,
 		Limit:   1e30,
@@ -137,7 +159,7 @@ func start(geo *semi.CoupledGeometry, r Rung, forcing semi.Forcing) *Run {
 }
 
 // Observe implements evolve.Observer.
-func (r *Run) Observe(_ int, _ float64, u []float64) { r.Fields.observe(u, r.geo.Grid.N) }
+func (r *Run) Observe(_ int, _ float64, u []float64) { r.Fields.observe(u) }
 
 // locate names the place of a state index.
 func (r *Run) locate(index int) (place, mode string) {
@@ -157,5 +179,6 @@ func (r *Run) Until(ctx context.Context, t float64) error {
 	if n <= 0 {
 		return nil
 	}
+	r.Fields.grow(n + 1)
 	return r.inner.Advance(ctx, n)
 }

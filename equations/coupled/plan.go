@@ -8,46 +8,69 @@ import (
 	"nullmark/source/worldline"
 )
 
-// Reach is what the grid rule needs to know of an orbit and of what is asked.
-type Reach struct {
-	Hole       hyperboloidal.Kerr
-	RMin, RMax float64 // turning points
-	Angular    int     // l's carried at this m
+// Domain is the grid rule: one slicing for all rungs of an orbit, so that their
+// amplitudes compare without a shift in time.
+type Domain struct {
+	Layers hyperboloidal.KerrLayers
+	Ramp   source.Ramp
 }
 
-// Bound returns the rung of spacing close to dx for a bound orbit: the slicing
-// is flat 8 kernel widths (at least 5) around the orbit, the layers are 13
-// thick, the outer one at least 1.5 r_max (the near field of slow orbits is
-// static there), the kernel has 12 moments and 1.8 cells, differences are of
-// order 12 and the time step is 1.2 cells. The ramp is slower for fast-spinning
-// holes, whose slowly damped modes it must not excite.
-func Bound(q Reach, dx float64) Rung {
-	const (
-		thick, flat  = 13.0, 5.0
-		cells, reach = 1.8, 8.0
-		courant      = 1.2
-		order        = 12
-	)
-	h := q.Hole
+// Defaults of the scheme, from scans against the frequency-domain solver.
+const (
+	defaultCells   = 2.0 // kernel width in cells
+	defaultMoments = 16
+	defaultOrder   = 12
+	defaultTaylor  = 8
+	defaultCourant = 1.2
+	defaultFilter  = 16
+	steepness      = 2.0
+	innerThickness = 20.0
+	outerThickness = 25.0
+	innermost      = 4.0 // the inner layer begins at or below this r*
+	flatRoom       = 5.0
+	flatWidths     = 8.0 // of the kernel
+)
+
+// Bound places the slicing around a bound orbit between rmin and rmax for
+// spacings up to widest: flat over 8 kernel widths (at least 5) on both sides,
+// an inner layer 20 thick that begins at r* = 4 or below (further out dr/drho at
+// the horizon would be large and the end stiff), an outer one 25 thick, at least
+// 1.5 rmax (the near field of a slow orbit is static out to there). The ramp is
+// slower for fast-spinning holes, whose slowly damped modes it must not excite.
+func Bound(h hyperboloidal.Kerr, rmin, rmax, widest float64) Domain {
 	rp := h.OuterHorizon()
-	lo, hi := h.Tortoise(q.RMin-rp), h.Tortoise(q.RMax-rp)
-	sigma := cells * dx
-	w := math.Max(flat, reach*sigma)
-	outer := math.Max(thick, 1.5*q.RMax)
-	r := Rung{
+	lo, hi := h.Tortoise(rmin-rp), h.Tortoise(rmax-rp)
+	w := math.Max(flatRoom, flatWidths*defaultCells*widest)
+	ri := math.Min(lo-w, innermost)
+	d := Domain{
 		Layers: hyperboloidal.KerrLayers{
-			Hole: h, Si: lo - w - thick, Ri: lo - w, Ro: hi + w, So: hi + w + outer, Steepness: 3,
+			Hole: h, Si: ri - innerThickness, Ri: ri,
+			Ro: hi + w, So: hi + w + math.Max(outerThickness, 1.5*rmax), Steepness: steepness,
 		},
-		Kernel: sigma, Moments: 12, Order: order, Angular: q.Angular, Filter: 16,
 		Ramp: source.Ramp{Centre: 90, Width: 17},
 	}
 	if math.Abs(h.Spin()) > 0.95 {
-		r.Ramp = source.Ramp{Centre: 300, Width: 60}
+		d.Ramp = source.Ramp{Centre: 300, Width: 60}
 	}
-	r.Points = max(int(math.Ceil((r.Layers.So-r.Layers.Si)/dx))+1, 2*order+6)
-	r.Dt = courant * r.Dx()
+	return d
+}
+
+// Rung returns the rung of a spacing close to dx (never above it) with the
+// given count of l's: kernel 2 cells of 16 moments, differences of order 12,
+// Taylor-8 with steps of 1.2 cells, a filter of order 16.
+func (d Domain) Rung(dx float64, angular int) Rung {
+	r := Rung{
+		Layers: d.Layers, Moments: defaultMoments, Order: defaultOrder, Taylor: defaultTaylor,
+		Angular: angular, Filter: defaultFilter, Ramp: d.Ramp,
+	}
+	r.Points = max(int(math.Ceil((d.Layers.So-d.Layers.Si)/dx))+1, 2*defaultOrder+6)
+	r.Kernel = defaultCells * r.Dx()
+	r.Dt = defaultCourant * r.Dx()
 	return r
 }
+
+// On is the time at which the source has come to full strength.
+func (d Domain) On() float64 { return d.Ramp.Centre + 2*d.Ramp.Width }
 
 // Align shortens the time step so that a whole number of steps makes the period.
 func (r Rung) Align(period float64) Rung {
