@@ -134,13 +134,17 @@ func Moving(q Equation, r Rung, track source.KerrTrack) (*Run, error) {
 	return start(geo, r, source.NewTeukolskyMoving(carrier(geo), track, kern, r.Ramp)), nil
 }
 
+// filterStrength is how much of a grid-scale wave the filter takes a step.
+const filterStrength = 0.5
+
 func start(geo *semi.CoupledGeometry, r Rung, forcing semi.Forcing) *Run {
 	run := &Run{geo: geo}
 	run.Fields = newFields(geo.Coupling.LMin, geo.Modes, r)
 	sys := semi.NewCoupled(geo, forcing)
 	length := geo.Length()
+	stepper := march.NewCompensated(sys, r.Taylor, length)
 	run.inner = evolve.Run{
-		Stepper: march.NewTaylor(sys, r.Taylor, length),
+		Stepper: stepper,
 		State:   make([]float64, length),
 		Dt:      r.Dt,
 		Limit:   1e30,
@@ -148,11 +152,10 @@ func start(geo *semi.CoupledGeometry, r Rung, forcing semi.Forcing) *Run {
 	}
 	run.inner.Observers = []evolve.Observer{run}
 	if r.Filter > 0 {
-		f := stencil.NewFilter(r.Filter, 0.5)
-		scratch := make([]float64, length/2)
-		run.inner.AfterStep = func(_ float64, u []float64) {
-			f.Apply(u[:length/2], scratch, geo.Stride())
-			f.Apply(u[length/2:], scratch, geo.Stride())
+		f := stencil.NewHighPass(r.Filter, filterStrength, length/2)
+		stepper.Increment = func(inc, u []float64) {
+			f.Add(inc[:length/2], u[:length/2], geo.Stride())
+			f.Add(inc[length/2:], u[length/2:], geo.Stride())
 		}
 	}
 	return run

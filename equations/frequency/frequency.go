@@ -130,21 +130,25 @@ func (p *Problem) mode(ev, xp float64, c [3]complex128, nodes int) (inf, hor com
 	h := p.Hole
 	a2 := h.Spin() * h.Spin()
 	top := 1 / h.OuterHorizon()
+	gap := math.Inf(1) // to the singular point at the inner horizon
+	if h.InnerHorizon() > 0 {
+		gap = 1/h.InnerHorizon() - top
+	}
 	// Domains in x, the particle at a joint. Power laws r^k make domains of
 	// bounded ratio converge fast; so does a bounded ratio of distances to the
-	// horizon.
+	// inner horizon, which a fast-spinning hole has close by.
 	var edges []float64
 	for x := xp; ; {
 		edges = append([]float64{x}, edges...)
-		if x <= math.Abs(p.Omega)*2 || len(edges) > 12 {
+		if x <= math.Min(2*math.Abs(p.Omega), 1.5*(top-x)) || len(edges) > 12 {
 			break
 		}
-		x /= 2.5
+		x = math.Max(x/2.5, x-1.2*(top-x))
 	}
 	edges = append([]float64{0}, edges...)
 	joint := len(edges) - 1
-	for x := xp; top-x > 0.6*top; {
-		x = math.Min(2.5*x, 0.5*(x+top))
+	for x := xp; top-x > math.Min(0.6*top, 1.5*gap) && len(edges) < 40; {
+		x = math.Min(2.5*x, top-(top-x)/2.5)
 		edges = append(edges, x)
 	}
 	edges = append(edges, top)
