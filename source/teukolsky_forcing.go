@@ -28,9 +28,9 @@ func (k Kernel) At2(x float64) (d, d1, d2 float64) {
 	return g * d, g * d1 * scale, g * d2 * scale * scale
 }
 
-// teukolskyReach is how many widths the kernel and its first two derivatives are
+// TeukolskyReach is how many widths the kernel and its first two derivatives are
 // carried to: cut at 9.5 they leave 1e-11 in the flux, at 12.5 nothing.
-const teukolskyReach = 12.5
+const TeukolskyReach = 12.5
 
 // radialDeltas returns delta(x - x_p) and its first two derivatives in x, at a
 // grid point of the slicing at the distance drho = rho - rho_p from the
@@ -134,7 +134,7 @@ func NewTeukolskyCircular(c KerrCarrier, k worldline.KerrState, omega float64, k
 	for l, q := range coeff {
 		amp[l] = [3]complex128{q[0] + dt*q[3] + dt*dt*q[5], q[1] + dt*q[4], q[2]}
 	}
-	f.lo, f.hi = c.support(k.Rho, teukolskyReach*kern.Sigma)
+	f.lo, f.hi = c.support(k.Rho, TeukolskyReach*kern.Sigma)
 	f.profile = make([]float64, (f.hi-f.lo)*f.st)
 	c.spread(f.profile, f.lo, f.hi, kern, k.Rho, amp)
 	return f
@@ -309,7 +309,7 @@ func (f *TeukolskyMoving) force(i int) *forceSample {
 		return s
 	}
 	rho := f.track.States[i].Rho
-	s.lo, s.hi = f.c.support(rho, teukolskyReach*f.kern.Sigma)
+	s.lo, s.hi = f.c.support(rho, TeukolskyReach*f.kern.Sigma)
 	if s.lo >= s.hi {
 		return s
 	}

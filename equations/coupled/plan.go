@@ -103,3 +103,55 @@ func BoundTrack(o *worldline.KerrBound, dt, until float64) source.KerrTrack {
 	}
 	return t
 }
+
+// Fall is the slicing for an equatorial orbit that starts at radius from (its
+// largest radius, for scattering) and either turns or plunges through the
+// horizon: flat from r* = -3 to beyond the start, so that no layer lies above
+// the orbit before it nears the horizon.
+func Fall(h hyperboloidal.Kerr, from, widest float64) Domain {
+	const (
+		inner, thick = -3.0, 20.0
+		slope        = 0.05
+	)
+	w := math.Max(flatRoom, flatWidths*defaultCells*widest)
+	hi := h.Tortoise(from - h.OuterHorizon())
+	d := Domain{
+		Layers: hyperboloidal.KerrLayers{
+			Hole: h, Si: inner - thick, Ri: inner, Ro: hi + w, So: hi + w + outerThickness, Steepness: 3,
+		},
+		Ramp: source.Ramp{Centre: 90, Width: 17},
+	}
+	d.Layers.Slope = hyperboloidal.KerrPlungeSlope(h, d.Layers.Si, slope)
+	return d
+}
+
+// Plunge is Rung for a worldline through the horizon: the filter is of order 12.
+func (d Domain) Plunge(dx float64, angular int) Rung {
+	r := d.Rung(dx, angular)
+	r.Filter = 12
+	return r
+}
+
+// FallTrack samples an equatorial geodesic of energy e and angular momentum l
+// that is at radius from and Boyer–Lindquist azimuth phi at slicing time 0, moving
+// inwards or outwards, at a quarter of the rung's time step up to time until. It
+// ends early when the particle's kernel has left the grid through the horizon.
+func FallTrack(r Rung, e, l, from, phi float64, inward bool, until float64) (source.KerrTrack, error) {
+	h := r.Layers.Hole
+	f := worldline.NewKerrFall(r.Layers, e, l)
+	begin, err := f.Begin(from, phi+h.Azimuth(from-h.OuterHorizon()), inward)
+	if err != nil {
+		return source.KerrTrack{}, err
+	}
+	step := r.Dt / 4
+	n := int(math.Ceil(until/step)) + 2*source.TrackTrail + 8
+	stop := r.Layers.Si - source.TeukolskyReach*r.Kernel - 1
+	after := f.Sample(begin, step, n, stop)
+	before := f.Sample(begin, -step, source.TrackLead+1, math.Inf(-1))
+	t := source.KerrTrack{Start: -source.TrackLead * step, Step: step}
+	for i := source.TrackLead; i >= 1; i-- {
+		t.States = append(t.States, before[i])
+	}
+	t.States = append(t.States, after...)
+	return t, nil
+}
