@@ -177,3 +177,17 @@ func plainNode(s string) *yaml.Node {
 func flow(kind yaml.Kind, content ...*yaml.Node) *yaml.Node {
 	return &yaml.Node{Kind: kind, Style: yaml.FlowStyle, Content: content}
 }
+
+// Tree returns the resolved case as plain maps, lists and scalars, as result.json
+// stores it. The tree is the caller's.
+func (c *Case) Tree() (map[string]any, error) {
+	data, err := c.YAML()
+	if err != nil {
+		return nil, err
+	}
+	var tree map[string]any
+	if err := yaml.Unmarshal(data, &tree); err != nil {
+		return nil, fmt.Errorf("configs: writing the case: %w", err)
+	}
+	return tree, nil
+}

@@ -11,6 +11,9 @@ import (
 )
 
 func main() {
-	engine := app.Engine{Checks: wire.Checks, Warnings: wire.Warnings, Plan: wire.MakePlan, Run: wire.Run}
-	os.Exit(app.Run(context.Background(), engine, os.Args[1:], os.Stdout, os.Stderr))
+	os.Exit(app.Run(context.Background(), engine(), os.Args[1:], os.Stdout, os.Stderr))
+}
+
+func engine() app.Engine {
+	return app.Engine{Checks: wire.Checks, Warnings: wire.Warnings, Plan: wire.MakePlan, Run: wire.Run}
 }

@@ -32,10 +32,11 @@ const (
 	Ratio = 0.8
 	// CoarsestSpacing is that of rung 0, M.
 	CoarsestSpacing = 0.64
-	// discFactor turns the complex difference of the two finest rungs into a
-	// bar. Where the scheme's leading term rules, the remaining error is 0.03
-	// (order 16) to 0.07 (order 12) of that difference.
-	discFactor = 0.1
+	// margin times what the leading term of a scheme's error leaves of the
+	// difference of the two finest rungs, Ratio^p/(1-Ratio^p), is the bar: 0.1
+	// of the difference at order 12, of which 0.03 (where the kernel's order 16
+	// rules) to 0.07 are seen.
+	margin = 1.25
 	// guard replaces a difference that is small by accident (it crosses zero
 	// where two terms of the error cancel) by this fraction of the next
 	// coarser difference.
@@ -51,8 +52,9 @@ const epsilon = 2.220446049250313e-16
 
 // Discretisation bounds the relative error of the amplitude z[0] of the finest
 // rung by its complex differences from the coarser rungs z[1], z[2] (each Ratio
-// times fewer points). It wants at least two rungs.
-func Discretisation(z []complex128) float64 {
+// times fewer points), for a scheme of the given order. It wants at least two
+// rungs.
+func Discretisation(z []complex128, order int) float64 {
 	if len(z) < 2 {
 		panic("certify: a discretisation bar wants at least two rungs")
 	}
@@ -60,7 +62,13 @@ func Discretisation(z []complex128) float64 {
 	if len(z) > 2 {
 		d = math.Max(d, guard*cmplx.Abs(z[1]-z[2]))
 	}
-	return discFactor * d / cmplx.Abs(z[0])
+	return leftover(order) * d / cmplx.Abs(z[0])
+}
+
+// leftover is the part of a difference of two rungs that bounds what is left.
+func leftover(order int) float64 {
+	r := math.Pow(Ratio, float64(order))
+	return margin * r / (1 - r)
 }
 
 // RoundOff is the relative floor of an amplitude of frequency omega on n points.
@@ -83,5 +91,5 @@ func Predict(end End, l int, r0, dx float64) float64 {
 	} else {
 		e, least = -8.6+0.8*float64(l-2)-5*r, -11.5
 	}
-	return discFactor * math.Pow(10, math.Max(e, least)) * math.Pow(dx/0.4096, 13)
+	return leftover(12) * math.Pow(10, math.Max(e, least)) * math.Pow(dx/0.4096, 13)
 }

@@ -77,14 +77,15 @@ type Reading struct {
 // reading at the given end for a window ending at until.
 //
 // At infinity: min{2P, max[2P min(1,(l+3)/(Omega T)), w]}; at the horizon
-// 2 min{P, w}; w = S1 rho/(1-rho), rho = min(S1/S2, 0.9) extrapolates the
-// geometric decay seen in shifted windows.
+// 2 min{P, w}; w = S1 rho/(1-rho) extrapolates the geometric decay seen in
+// shifted windows, rho = S1/S2 kept within 0.1 and 0.9: a window that reaches
+// back into the switch-on makes S2 huge and would feign a faster decay.
 func (r Reading) Transient(end End, tone Tone, until float64) float64 {
 	w := math.Inf(1) // nothing to extrapolate from when there was no room to shift
 	if !math.IsInf(r.Shift2, 1) {
 		rho := 0.9
 		if r.Shift2 > 0 {
-			rho = math.Min(r.Shift1/r.Shift2, 0.9)
+			rho = math.Min(math.Max(r.Shift1/r.Shift2, 0.1), 0.9)
 		}
 		w = r.Shift1 * rho / (1 - rho)
 	}

@@ -231,7 +231,7 @@ func extractionChecks() []Check {
 	for _, c := range []struct {
 		r0   float64
 		slow bool
-	}{{100, false}, {50, true}, {200, true}} {
+	}{{50, false}, {100, true}, {200, true}} {
 		v := 1 / math.Sqrt(c.r0)
 		series, next := Series(v)
 		leading := quadrupole(v)

@@ -14,8 +14,6 @@ import (
 	"nullmark/extract/result"
 	"nullmark/extract/strain"
 	"nullmark/hyperboloidal"
-
-	"go.yaml.in/yaml/v3"
 )
 
 const (
@@ -25,7 +23,7 @@ const (
 
 // assemble turns finished ladders into the data of a result.
 func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
-	tree, err := caseTree(c)
+	tree, err := c.Tree()
 	if err != nil {
 		return nil, err
 	}
@@ -58,19 +56,6 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	return &result.Bundle{Result: res, Series: r.series(c)}, nil
 }
 
-// caseTree is the resolved case as plain maps and lists.
-func caseTree(c *configs.Case) (any, error) {
-	text, err := c.YAML()
-	if err != nil {
-		return nil, err
-	}
-	var tree any
-	if err := yaml.Unmarshal(text, &tree); err != nil {
-		return nil, err
-	}
-	return tree, nil
-}
-
 func (r *circularRun) describe() *result.Orbit {
 	o := r.orbit
 	return &result.Orbit{
@@ -84,12 +69,12 @@ func (r *circularRun) describe() *result.Orbit {
 }
 
 func (r *circularRun) entry(m *ladder, rung int) result.Mode {
-	t := m.mode.tone
-	inf, hor := m.bars[certify.Infinity], m.bars[certify.Horizon]
+	t := m.circ.tone
+	inf, hor := m.circ.bars[certify.Infinity], m.circ.bars[certify.Horizon]
 	out := result.Mode{
-		L: t.L, M: t.M, Parity: parityName(m.mode.parity), Measure: rate, Counts: bothSigns,
-		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Infinity]), inf.Bar()),
-		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.z[certify.Horizon]), hor.Bar()),
+		L: t.L, M: t.M, Parity: m.parity.String(), Measure: rate, Counts: bothSigns,
+		Infinity: flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.circ.z[certify.Infinity]), inf.Bar()),
+		Horizon:  flux.Steady(t.L, t.M, t.Omega, cmplx.Abs(m.circ.z[certify.Horizon]), hor.Bar()),
 		Met:      m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
 			"discretisation": inf.Discretisation, "transient": inf.Transient, "round-off": inf.RoundOff,
@@ -105,8 +90,8 @@ func (r *circularRun) entry(m *ladder, rung int) result.Mode {
 // strainAmplitude is r h_lm e^{i m phi_p(u)}/mu: with u = tau - So the tone
 // Z e^{-i omega tau} is Z e^{-i omega So} e^{-i omega u}.
 func (r *circularRun) strainAmplitude(m *ladder) complex128 {
-	return strain.Factor(m.mode.tone.L, m.mode.parity == equations.Odd) *
-		m.z[certify.Infinity] * cmplx.Exp(complex(0, -m.mode.tone.Omega*r.n.domain.So))
+	return strain.Factor(m.circ.tone.L, m.parity == equations.Odd) *
+		m.circ.z[certify.Infinity] * cmplx.Exp(complex(0, -m.circ.tone.Omega*r.n.domain.So))
 }
 
 func (r *circularRun) totals(c *configs.Case, res *result.Result) {
@@ -176,9 +161,12 @@ func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
-			// A mode below the floor is held to the floor: the same fraction
-			// of the asked accuracy on the scale asked/floor.
-			scale := math.Max(f.Energy.Value, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			scale := f.Energy.Value
+			if scale < c.Accuracy.Floor*largest[e] {
+				// Below the floor the bar is held to floor times the largest,
+				// which is the asked accuracy on this scale.
+				scale = math.Max(scale, c.Accuracy.Floor*largest[e]/c.Accuracy.Relative)
+			}
 			if rel := f.Energy.Error / scale; rel > a.Worst.Relative {
 				a.Worst = result.Worst{L: m.L, M: m.M, What: "energy at " + certify.End(e).String(), Relative: rel}
 			}
@@ -221,9 +209,9 @@ func ladderOfTimes(step, from, to float64) []float64 {
 }
 
 func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
-	t := m.mode.tone
+	t := m.circ.tone
 	fine := m.runs[m.rung]
-	fac := strain.Factor(t.L, m.mode.parity == equations.Odd)
+	fac := strain.Factor(t.L, m.parity == equations.Odd)
 	d := r.n.domain
 	out := result.ModeSeries{L: t.L, M: t.M}
 	wave := func(s *certify.Samples) []complex128 {
@@ -239,14 +227,14 @@ func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
 	// The truth is the steady signal: what a sample still carries of the
 	// start-up is its distance from that, on top of the amplitude's own bar.
 	h := r.strainAmplitude(m)
-	bar := cmplx.Abs(h) * m.bars[certify.Infinity].Bar()
+	bar := cmplx.Abs(h) * m.circ.bars[certify.Infinity].Bar()
 	for i, t0 := range u {
 		steady := h * cmplx.Exp(complex(0, -t.Omega*t0))
 		out.WaveErr = append(out.WaveErr, cmplx.Abs(out.Wave[i]-steady)+bar)
 		out.Evidence = append(out.Evidence, cmplx.Abs(out.Wave[i]-coarse[i]))
 	}
-	zh := m.z[certify.Horizon]
-	barH := cmplx.Abs(zh) * m.bars[certify.Horizon].Bar()
+	zh := m.circ.z[certify.Horizon]
+	barH := cmplx.Abs(zh) * m.circ.bars[certify.Horizon].Bar()
 	for i, t0 := range v {
 		steady := zh * cmplx.Exp(complex(0, -t.Omega*(t0-d.Si)))
 		out.HorizonErr = append(out.HorizonErr, cmplx.Abs(out.Horizon[i]-steady)+barH)

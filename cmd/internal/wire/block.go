@@ -16,17 +16,17 @@ import (
 	"nullmark/extract/sample"
 	"nullmark/grid"
 	"nullmark/grid/march"
+	"nullmark/grid/stencil"
 	"nullmark/source"
 )
 
 // blockModes is how many complex modes one block carries.
 const blockModes = grid.Lanes / 2
 
-// circularMode is one mode of a circular orbit: its tone and source amplitudes.
-type circularMode struct {
-	tone   certify.Tone
+// blockMode names one field of a block.
+type blockMode struct {
+	l, m   int
 	parity equations.Parity
-	f, g   float64
 }
 
 // blockRun is what one evolution of a block on one rung left behind.
@@ -41,25 +41,21 @@ type blockRun struct {
 // evolveBlock evolves up to blockModes modes on rung k. It runs to until, and
 // further in steps while more says so (more may be nil). Progress is reported
 // in point-steps.
-func (n *numerics) evolveBlock(ctx context.Context, modes []circularMode, rstar float64, k int, until float64, more func(s []certify.Samples, until float64) (next float64), progress func(done float64)) (*blockRun, error) {
+func (n *numerics) evolveBlock(ctx context.Context, modes []blockMode, force func(g grid.Grid, kernel source.Kernel, dt float64) semi.Forcing, k int, until float64, more func(s []certify.Samples, until float64) (next float64), progress func(done float64)) (*blockRun, error) {
 	start := time.Now()
 	g := n.grid(k)
 	geo, err := semi.NewGeometry(n.domain, g, n.order)
 	if err != nil {
 		return nil, err
 	}
-	var f, gg, omega []float64
 	var pots []equations.Potential
 	for _, m := range modes {
-		f, gg, omega = append(f, m.f), append(gg, m.g), append(omega, m.tone.Omega)
-		p := equations.Master(m.parity, m.tone.L)
+		p := equations.Master(m.parity, m.l)
 		pots = append(pots, p, p)
 	}
-	kernel := source.NewKernel(n.cells*g.Dx, n.moments)
-	forcing := source.NewStationary(g.Rho(), rstar, kernel, n.ramp, f, gg, omega)
-	sys := semi.NewMaster(geo, pots, forcing)
-	stepper := march.NewTaylor(sys, n.taylor, sys.Length())
 	dt := n.courant * g.Dx
+	sys := semi.NewMaster(geo, pots, force(g, source.NewKernel(n.cells*g.Dx, n.moments), dt))
+	stepper := march.NewTaylor(sys, n.taylor, sys.Length())
 	rec := sample.NewEnds(len(modes), grid.Lanes, dt, 0)
 	run := &evolve.Run{
 		Stepper: stepper, State: make([]float64, sys.Length()), Dt: dt,
@@ -69,10 +65,18 @@ func (n *numerics) evolveBlock(ctx context.Context, modes []circularMode, rstar 
 			p := geo.Points[i%half/grid.Lanes]
 			mode := "an empty lane"
 			if q := i % grid.Lanes / 2; q < len(modes) {
-				mode = fmt.Sprintf("(%d,%d)", modes[q].tone.L, modes[q].tone.M)
+				mode = fmt.Sprintf("(%d,%d)", modes[q].l, modes[q].m)
 			}
 			return fmt.Sprintf("rho = %.6g (r = %.6g)", p.Rho, p.R), mode
 		},
+	}
+	if n.filter > 0 {
+		f := stencil.NewFilter(n.filter, n.filterStrength)
+		scratch := make([]float64, sys.Length()/2)
+		run.AfterStep = func(_ float64, u []float64) {
+			f.Apply(u[:len(u)/2], scratch, grid.Lanes)
+			f.Apply(u[len(u)/2:], scratch, grid.Lanes)
+		}
 	}
 	for {
 		steps := int(math.Ceil(until/dt)) - run.Steps

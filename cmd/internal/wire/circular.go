@@ -5,13 +5,13 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
-	"sort"
 	"strings"
 
 	"nullmark/configs"
-	"nullmark/equations"
+	"nullmark/equations/semi"
 	"nullmark/extract/certify"
 	"nullmark/extract/result"
+	"nullmark/grid"
 	"nullmark/hyperboloidal"
 	"nullmark/source"
 )
@@ -30,60 +30,44 @@ func newCircularOrbit(r0 float64) circularOrbit {
 	}
 }
 
-func (o circularOrbit) mode(l, m int, on float64) circularMode {
+// circularMode is what one mode of a circular orbit carries: its tone, its
+// source amplitudes, and at the end its amplitudes with their budgets.
+type circularMode struct {
+	tone  certify.Tone
+	f, g  float64
+	power int        // of the demodulation window
+	scout [2]float64 // |amplitude| of the scouting run by end
+	z     [2]complex128
+	bars  [2]certify.Budget
+}
+
+func (o circularOrbit) mode(l, m int, on float64) *circularMode {
 	src := source.NewMasterSource(l, m)
 	f, g := src.Amplitudes(&source.Motion{R: o.r0, Y: o.r0 - 2, E: o.energy, L: o.angmom})
-	return circularMode{
-		tone:   certify.Tone{L: l, M: m, Omega: float64(m) * o.omega, On: on},
-		parity: src.Parity, f: real(f), g: real(g),
-	}
+	return &circularMode{tone: certify.Tone{L: l, M: m, Omega: float64(m) * o.omega, On: on}, f: real(f), g: real(g)}
 }
 
-// ladder is the state of one mode on its way up the rungs.
-type ladder struct {
-	mode   circularMode
-	rung   int // finest rung asked for
-	until  float64
-	scout  [2]float64 // |amplitude| of the scouting run by end
-	allow  [2]float64 // relative flux bar that counts as met, by end
-	power  int
-	runs   map[int]*certify.Samples // by rung
-	points map[int]int
-	bars   [2]certify.Budget
-	z      [2]complex128
-	met    bool
-	why    string
-	done   bool
-}
-
-// circularRun is a whole case under way.
+// circularRun is a circular orbit on its way up the ladder.
 type circularRun struct {
-	n       numerics
-	orbit   circularOrbit
-	asked   float64
-	floor   float64
-	o       Options
-	meter   *meter
-	modes   []*ladder
-	rungs   map[int]*result.Rung
-	members map[int]map[string]bool
-	cost    float64
+	*climb
+	orbit circularOrbit
+	asked float64
+	floor float64
 }
 
 func newCircularRun(c *configs.Case, n numerics, o Options) *circularRun {
-	r := &circularRun{
-		n: n, orbit: newCircularOrbit(c.Orbit.Radius), asked: c.Accuracy.Relative, floor: c.Accuracy.Floor, o: o,
-		meter: &meter{tell: o.Progress}, rungs: map[int]*result.Rung{}, members: map[int]map[string]bool{},
-	}
-	r.n.place(r.orbit.rstar)
+	orbit := newCircularOrbit(c.Orbit.Radius)
+	n.place(orbit.rstar)
+	r := &circularRun{climb: newClimb(n, o), orbit: orbit, asked: c.Accuracy.Relative, floor: c.Accuracy.Floor}
+	r.kind = r
 	for _, lm := range c.ModeList() {
 		if lm[1] == 0 {
 			continue
 		}
-		r.modes = append(r.modes, &ladder{
-			mode: r.orbit.mode(lm[0], lm[1], r.n.on()), power: certify.WindowPower(r.asked),
-			runs: map[int]*certify.Samples{}, points: map[int]int{},
-		})
+		m := newLadder(lm[0], lm[1])
+		m.circ = r.orbit.mode(lm[0], lm[1], r.n.on())
+		m.circ.power = certify.WindowPower(r.asked)
+		r.modes = append(r.modes, m)
 	}
 	return r
 }
@@ -95,14 +79,8 @@ func runCircular(ctx context.Context, c *configs.Case, n numerics, o Options) (*
 	if err := r.scouting(ctx); err != nil {
 		return nil, err
 	}
-	for round := 0; ; round++ {
-		pending := r.pending()
-		if len(pending) == 0 {
-			break
-		}
-		if err := r.round(ctx, round, pending); err != nil {
-			return nil, err
-		}
+	if err := r.run(ctx); err != nil {
+		return nil, err
 	}
 	b, err := r.assemble(c)
 	if err != nil {
@@ -110,6 +88,17 @@ func runCircular(ctx context.Context, c *configs.Case, n numerics, o Options) (*
 	}
 	b.Result.Provenance = clock.stop(o.Workers)
 	return b, nil
+}
+
+// force implements kind.
+func (r *circularRun) force(modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {
+	var f, g, omega []float64
+	for _, m := range modes {
+		f, g, omega = append(f, m.circ.f), append(g, m.circ.g), append(omega, m.circ.tone.Omega)
+	}
+	return func(gr grid.Grid, kernel source.Kernel, _ float64) semi.Forcing {
+		return source.NewStationary(gr.Rho(), r.orbit.rstar, kernel, r.n.ramp, f, g, omega)
+	}
 }
 
 // scouting runs every mode once on the coarsest rung, for the size of its
@@ -120,7 +109,7 @@ func (r *circularRun) scouting(ctx context.Context) error {
 	until := func(a, b int) float64 {
 		t := 0.0
 		for _, m := range r.modes[a:b] {
-			t = math.Max(t, certify.Earliest(m.mode.tone, 1)+60)
+			t = math.Max(t, certify.Earliest(m.circ.tone, 1)+60)
 		}
 		return t
 	}
@@ -134,12 +123,12 @@ func (r *circularRun) scouting(ctx context.Context) error {
 			return err
 		}
 		for q, m := range r.modes[a:b] {
-			for e := range m.scout {
-				rd, err := certify.Read(&run.Samples[q], certify.End(e), m.mode.tone, run.Until, 1)
+			for e := range m.circ.scout {
+				rd, err := certify.Read(&run.Samples[q], certify.End(e), m.circ.tone, run.Until, 1)
 				if err != nil {
 					return err
 				}
-				m.scout[e] = cmplx.Abs(rd.Z)
+				m.circ.scout[e] = cmplx.Abs(rd.Z)
 			}
 		}
 		return nil
@@ -155,7 +144,10 @@ func (r *circularRun) scouting(ctx context.Context) error {
 	}
 	for _, m := range r.modes {
 		for e := range m.allow {
-			m.allow[e] = math.Max(r.asked, r.floor*largest[e]/m.size(e))
+			m.allow[e] = r.asked
+			if size := m.size(e); size < r.floor*largest[e] {
+				m.allow[e] = math.Max(r.asked, r.floor*largest[e]/size)
+			}
 		}
 		m.rung = r.startRung(m)
 	}
@@ -164,8 +156,8 @@ func (r *circularRun) scouting(ctx context.Context) error {
 
 // size is the flux of the scouting amplitude at an end, up to a common factor.
 func (m *ladder) size(e int) float64 {
-	l := float64(m.mode.tone.L)
-	return (l - 1) * l * (l + 1) * (l + 2) * m.mode.tone.Omega * m.mode.tone.Omega * m.scout[e] * m.scout[e]
+	l := float64(m.circ.tone.L)
+	return (l - 1) * l * (l + 1) * (l + 2) * m.circ.tone.Omega * m.circ.tone.Omega * m.circ.scout[e] * m.circ.scout[e]
 }
 
 // startRung is the coarsest rung whose predicted discretisation bar is half of
@@ -180,7 +172,7 @@ func (r *circularRun) startRung(m *ladder) int {
 		ok := true
 		for e := range m.allow {
 			// Below 2e-12 round-off rules whatever the grid.
-			ok = ok && certify.Predict(certify.End(e), m.mode.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 2e-12)/2
+			ok = ok && certify.Predict(certify.End(e), m.circ.tone.L, r.orbit.r0, dx) <= math.Max(m.allow[e], 4e-12)/2
 		}
 		if ok {
 			break
@@ -194,7 +186,7 @@ func (r *circularRun) firstUntil(m *ladder) float64 {
 	if r.n.until > 0 {
 		return r.n.until
 	}
-	return certify.Earliest(m.mode.tone, m.power) + 60
+	return certify.Earliest(m.circ.tone, m.circ.power) + 60
 }
 
 // lastUntil is where it is given up.
@@ -202,134 +194,37 @@ func (r *circularRun) lastUntil(m *ladder) float64 {
 	if r.n.until > 0 {
 		return r.n.until
 	}
-	p := m.mode.tone.Period()
-	return math.Max(certify.Earliest(m.mode.tone, m.power)+12*p, 3000)
+	p := m.circ.tone.Period()
+	return math.Max(certify.Earliest(m.circ.tone, m.circ.power)+12*p, 3000)
 }
 
-// more says to when a block must go on so that every mode's transients are a
-// third of what is allowed, or its present end when they are.
-func (r *circularRun) more(modes []*ladder, points int) func([]certify.Samples, float64) float64 {
-	return func(s []certify.Samples, until float64) float64 {
-		next := until
-		for q, m := range modes {
-			if until >= r.lastUntil(m) {
-				continue
-			}
-			floor := 2 * certify.RoundOff(points, m.mode.tone.Omega)
-			for e := range m.allow {
-				rd, err := certify.Read(&s[q], certify.End(e), m.mode.tone, until, m.power)
-				if err != nil || 2*rd.Transient(certify.End(e), m.mode.tone, until) > math.Max(m.allow[e]/3, floor) {
-					next = math.Max(next, math.Min(until+math.Max(40, 0.3*m.mode.tone.Period()), r.lastUntil(m)))
-				}
-			}
+// stride implements kind.
+func (r *circularRun) stride(m *ladder) float64 { return math.Max(40, 0.3*m.circ.tone.Period()) }
+
+// quiet implements kind: the transients are a third of what is allowed, or
+// below round-off, at both ends.
+func (r *circularRun) quiet(s *certify.Samples, m *ladder, until float64, points int) bool {
+	floor := 2 * certify.RoundOff(points, m.circ.tone.Omega)
+	for e := range m.allow {
+		rd, err := certify.Read(s, certify.End(e), m.circ.tone, until, m.circ.power)
+		if err != nil || 2*rd.Transient(certify.End(e), m.circ.tone, until) > math.Max(m.allow[e]/3, floor) {
+			return false
 		}
-		return next
 	}
+	return true
 }
 
-// pending lists the modes that still want a rung, ordered so that blocks are
-// filled alike on any machine.
-func (r *circularRun) pending() []*ladder {
-	var p []*ladder
-	for _, m := range r.modes {
-		if !m.done {
-			p = append(p, m)
-		}
-	}
-	sort.SliceStable(p, func(i, j int) bool {
-		a, b := p[i], p[j]
-		if a.rung != b.rung {
-			return a.rung < b.rung
-		}
-		if a.mode.tone.M != b.mode.tone.M {
-			return a.mode.tone.M < b.mode.tone.M
-		}
-		return a.mode.tone.L < b.mode.tone.L
-	})
-	return p
-}
-
-// round runs the wanted rung of every pending mode, with the coarser ones that
-// its bar needs, and certifies.
-func (r *circularRun) round(ctx context.Context, round int, pending []*ladder) error {
-	r.meter.stage(fmt.Sprintf("round %d, %d modes", round+1, len(pending)))
-	var blocks [][]*ladder
-	for i := 0; i < len(pending); {
-		j := i
-		for j < len(pending) && j-i < blockModes && pending[j].rung == pending[i].rung {
-			j++
-		}
-		blocks = append(blocks, pending[i:j])
-		i = j
-	}
-	for _, b := range blocks {
-		t := 0.0
-		for _, m := range b {
-			t = math.Max(t, math.Max(m.until, r.firstUntil(m)))
-		}
-		for k := b[0].rung; k > b[0].rung-r.n.rungs && (round == 0 || k == b[0].rung); k-- {
-			r.expect(k, t)
-		}
-	}
-	return each(ctx, r.o.Workers, len(blocks), func(ctx context.Context, i int) error {
-		b := blocks[i]
-		k := b[0].rung
-		name := fmt.Sprintf("round-%d-block-%d", round, i)
-		until := 0.0
-		for _, m := range b {
-			if round == 0 {
-				until = math.Max(until, r.firstUntil(m))
-			} else {
-				until = math.Max(until, m.until)
-			}
-		}
-		var more func([]certify.Samples, float64) float64
-		if round == 0 && r.n.until == 0 {
-			more = r.more(b, r.n.grid(k).N)
-		}
-		fine, err := r.block(ctx, fmt.Sprintf("%s-rung-%d", name, k), b, k, until, more)
-		if err != nil {
-			return err
-		}
-		for q, m := range b {
-			m.runs[k], m.points[k] = &fine.Samples[q], fine.Points
-			if round == 0 {
-				m.until = fine.Until
-			}
-		}
-		if round == 0 {
-			for j := k - 1; j > k-r.n.rungs; j-- {
-				coarse, err := r.block(ctx, fmt.Sprintf("%s-rung-%d", name, j), b, j, fine.Until, nil)
-				if err != nil {
-					return err
-				}
-				for q, m := range b {
-					m.runs[j], m.points[j] = &coarse.Samples[q], coarse.Points
-				}
-			}
-		}
-		for _, m := range b {
-			if err := r.certify(m); err != nil {
-				return err
-			}
-		}
-		return nil
-	})
-}
-
-// certify reads the amplitudes of a mode, sets its bars, and decides whether it
-// is done or climbs.
-func (r *circularRun) certify(m *ladder) error {
+// certify reads the amplitudes of a mode and sets its bars.
+func (r *circularRun) certify(m *ladder) (climb bool, err error) {
 	m.met, m.why = true, ""
-	climb := false
-	for e := range m.z {
+	for e := range m.circ.z {
 		end := certify.End(e)
 		var z []complex128
 		var fine certify.Reading
 		for k := m.rung; k > m.rung-r.n.rungs; k-- {
-			rd, err := certify.Read(m.runs[k], end, m.mode.tone, m.until, m.power)
+			rd, err := certify.Read(m.runs[k], end, m.circ.tone, m.until, m.circ.power)
 			if err != nil {
-				return fmt.Errorf("span.until %g is too short for mode (%d,%d): %w", m.until, m.mode.tone.L, m.mode.tone.M, err)
+				return false, fmt.Errorf("span.until %g is too short for mode (%d,%d): %w", m.until, m.l, m.m, err)
 			}
 			if k == m.rung {
 				fine = rd
@@ -337,11 +232,11 @@ func (r *circularRun) certify(m *ladder) error {
 			z = append(z, rd.Z)
 		}
 		bar := certify.Budget{
-			Discretisation: certify.Discretisation(z),
-			Transient:      fine.Transient(end, m.mode.tone, m.until),
-			RoundOff:       certify.RoundOff(m.points[m.rung], m.mode.tone.Omega),
+			Discretisation: certify.Discretisation(z, min(r.n.order, r.n.moments)),
+			Transient:      fine.Transient(end, m.circ.tone, m.until),
+			RoundOff:       certify.RoundOff(m.points[m.rung], m.circ.tone.Omega),
 		}
-		m.z[e], m.bars[e] = fine.Z, bar
+		m.circ.z[e], m.circ.bars[e] = fine.Z, bar
 		if relative := bar.Bar() * (2 + bar.Bar()); !(relative <= m.allow[e]) {
 			m.met = false
 			m.why = strings.TrimPrefix(m.why+fmt.Sprintf("; at %s the %s holds the bar at %.1e", end, bar.Largest(), relative), "; ")
@@ -353,60 +248,5 @@ func (r *circularRun) certify(m *ladder) error {
 			}
 		}
 	}
-	if climb && !m.met && m.rung < r.n.maxRung && r.n.fixedRung < 0 {
-		delete(m.runs, m.rung-r.n.rungs+1)
-		m.rung++
-		return nil
-	}
-	m.done = true
-	return nil
+	return climb, nil
 }
-
-// block evolves modes on rung k, or takes the stored samples of an interrupted
-// run.
-func (r *circularRun) block(ctx context.Context, key string, modes []*ladder, k int, until float64, more func([]certify.Samples, float64) float64) (*blockRun, error) {
-	var list []circularMode
-	for _, m := range modes {
-		list = append(list, m.mode)
-	}
-	b, err := kept(r.o.Keep, key, func() (*blockRun, error) {
-		return r.n.evolveBlock(ctx, list, r.orbit.rstar, k, until, more, r.meter.did)
-	})
-	if err == nil {
-		r.log(k, modes, b)
-	}
-	return b, err
-}
-
-// log books a run under its rung.
-func (r *circularRun) log(k int, modes []*ladder, b *blockRun) {
-	r.meter.mu.Lock()
-	defer r.meter.mu.Unlock()
-	g := r.rungs[k]
-	if g == nil {
-		g = &result.Rung{Points: b.Points, Dx: b.Dx, Dt: b.Dt, Kernel: r.n.cells * b.Dx, Moments: r.n.moments, Order: r.n.order}
-		r.rungs[k], r.members[k] = g, map[string]bool{}
-	}
-	g.Until = math.Max(g.Until, b.Until)
-	g.CoreSeconds += b.Seconds
-	for _, m := range modes {
-		r.members[k][fmt.Sprintf("(%d,%d)", m.mode.tone.L, m.mode.tone.M)] = true
-	}
-}
-
-// expect announces the work of one block on rung k.
-func (r *circularRun) expect(k int, until float64) {
-	g := r.n.grid(k)
-	r.meter.expect(until / (r.n.courant * g.Dx) * float64(g.N))
-}
-
-// chunk splits n items into blocks.
-func chunk(n int) [][2]int {
-	var out [][2]int
-	for i := 0; i < n; i += blockModes {
-		out = append(out, [2]int{i, min(i+blockModes, n)})
-	}
-	return out
-}
-
-func parityName(p equations.Parity) string { return p.String() }

@@ -12,24 +12,26 @@ import (
 
 // numerics is every choice of the scheme; tests vary what case files cannot.
 type numerics struct {
-	order      int
-	courant    float64 // dt/dx
-	taylor     int     // order in time
-	cells      float64 // kernel width in cells
-	moments    int
-	inner      float64 // thickness of the layers, M
-	outer      float64
-	gap        float64 // extra flat room on both sides of the kernel, M
-	profile    hyperboloidal.Profile
-	ramp       source.Ramp
-	rungs      int // how many rungs a bar is made from, 2 or 3
-	maxRung    int
-	fixedRung  int // >= 0: run exactly this rung as the finest, no climbing
-	points     int // > 0: points of the finest rung
-	until      float64
-	widest     float64 // kernel width that the flat part makes room for, M
-	domain     hyperboloidal.Layers
-	coarsestDx float64
+	order          int
+	courant        float64 // dt/dx
+	taylor         int     // order in time
+	cells          float64 // kernel width in cells
+	moments        int
+	inner          float64 // thickness of the layers, M
+	outer          float64
+	gap            float64 // extra flat room on both sides of the kernel, M
+	profile        hyperboloidal.Profile
+	ramp           source.Ramp
+	rungs          int // how many rungs a bar is made from, 2 or 3
+	maxRung        int
+	fixedRung      int // >= 0: run exactly this rung as the finest, no climbing
+	points         int // > 0: points of the finest rung
+	until          float64
+	filter         int // order of the filter applied once a step, 0 = none
+	filterStrength float64
+	widest         float64 // kernel width that the flat part makes room for, M
+	domain         hyperboloidal.Layers
+	coarsestDx     float64
 }
 
 // choose gives the numerics of a case: measured defaults, overridden by what
@@ -95,7 +97,10 @@ func (n *numerics) place(rstar float64) {
 	n.coarsestDx = certify.CoarsestSpacing
 	n.widest = n.cells * n.coarsestDx
 	w := source.NewKernel(n.widest, n.moments).Reach() + n.gap
-	n.domain = hyperboloidal.Layers{Si: rstar - w - n.inner, Ri: rstar - w, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
+	// An inner layer that began far out would squeeze a large radius into its
+	// thickness, and the stretched coordinate would be stiff.
+	ri := math.Min(rstar-w, 0)
+	n.domain = hyperboloidal.Layers{Si: ri - n.inner, Ri: ri, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
 	if n.points > 0 {
 		// The asked points are those of the finest rung, which is rung
 		// rungs-1 of a ladder whose coarsest spacing follows.

@@ -28,19 +28,13 @@ func planCircular(c *configs.Case, n numerics) (*Plan, error) {
 	lots := map[int]*lot{}
 	for _, m := range r.modes {
 		m.allow = [2]float64{r.asked, r.asked}
-		// Newtonian estimate of how a mode's flux compares with (2,2).
-		small := math.Pow(1/r.orbit.r0, float64(m.mode.tone.L-2)) * math.Pow(float64(m.mode.tone.M)/float64(m.mode.tone.L), float64(2*m.mode.tone.L))
-		if small > 0 {
-			m.allow[0] = math.Max(r.asked, r.floor/small)
-			m.allow[1] = math.Max(r.asked, r.floor*math.Pow(r.orbit.r0, 2*float64(m.mode.tone.L-2)))
-		}
 		m.rung = r.startRung(m)
 		g := r.n.grid(m.rung)
 		until := r.firstUntil(m) + 250
 		if r.n.until > 0 {
 			until = r.n.until
 		}
-		p.Modes = append(p.Modes, PlannedMode{L: m.mode.tone.L, M: m.mode.tone.M, Points: g.N, Dx: g.Dx,
+		p.Modes = append(p.Modes, PlannedMode{L: m.circ.tone.L, M: m.circ.tone.M, Points: g.N, Dx: g.Dx,
 			Dt: r.n.courant * g.Dx, Kernel: r.n.cells * g.Dx, Until: until, Rung: m.rung})
 		if lots[m.rung] == nil {
 			lots[m.rung] = &lot{}

@@ -6,7 +6,6 @@ package wire
 import (
 	"context"
 	"fmt"
-	"math"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -132,11 +131,4 @@ func conventions() map[string]string {
 		"slicing":           "tau - rho = t - r_* in the outer layer, tau + rho = t + r_* in the inner one",
 		"orbital frequency": "omega_phi = r^{-3/2}",
 	}
-}
-
-func sanitize(x float64) float64 {
-	if math.IsNaN(x) || math.IsInf(x, 0) {
-		return 0
-	}
-	return x
 }

@@ -1,0 +1,77 @@
+package certify
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+
+	"nullmark/extract/demod"
+	"nullmark/extract/strain"
+)
+
+// Average is the mean of a mode's quadratic signals over whole radial periods,
+// per sign of m and without the factor (l+2)!/(l-2)!/(64 pi).
+type Average struct {
+	Power float64 // <|Psi_tau|^2>
+	Spin  float64 // <Im(Psi conj(Psi_tau))>: m times it is the flux of angular momentum
+}
+
+// MeanOver averages with the window sin^{2 power} over power+1 radial periods
+// ending at until: exact to round-off for signals whose squares repeat with the
+// radial period.
+func MeanOver(s *Samples, end End, until, period float64, power int) (Average, error) {
+	w := demod.Window{Start: until - float64(power+1)*period, Length: float64(power+1) * period, Power: power}
+	if w.Start < 0 || until > s.Until()+1e-9*until {
+		return Average{}, fmt.Errorf("averaging %d radial periods of %.4g M up to %.6g needs a longer run", power+1, period, until)
+	}
+	var a Average
+	var sum float64
+	k0 := int(math.Ceil(w.Start / s.Dt))
+	k1 := min(int(math.Floor(until/s.Dt)), len(s.Pi[end])-1)
+	for k := k0; k <= k1; k++ {
+		g := w.Weight(float64(k) * s.Dt)
+		p, q := s.Pi[end][k], s.Psi[end][k]
+		a.Power += g * (real(p)*real(p) + imag(p)*imag(p))
+		a.Spin += g * imag(q*cmplx.Conj(p))
+		sum += g
+	}
+	a.Power /= sum
+	a.Spin /= sum
+	return a, nil
+}
+
+// Distance is the root mean square difference of two rungs' Psi_tau over the
+// same window, relative to the finer's: unlike the difference of the averages it
+// does not vanish by accident.
+func Distance(fine, coarse *Samples, end End, until, period float64, power int) float64 {
+	w := demod.Window{Start: until - float64(power+1)*period, Length: float64(power+1) * period, Power: power}
+	k0 := int(math.Ceil(w.Start / fine.Dt))
+	k1 := min(int(math.Floor(until/fine.Dt)), len(fine.Pi[end])-1)
+	last := coarse.Until()
+	var at []float64
+	for k := k0; k <= k1; k++ {
+		t := float64(k) * fine.Dt
+		if t > last {
+			break
+		}
+		at = append(at, t)
+	}
+	other := strain.Resample(coarse.Pi[end], 0, coarse.Dt, at)
+	var d, p float64
+	for i, t := range at {
+		g := w.Weight(t)
+		a := fine.Pi[end][k0+i]
+		b := a - other[i]
+		d += g * (real(b)*real(b) + imag(b)*imag(b))
+		p += g * (real(a)*real(a) + imag(a)*imag(a))
+	}
+	return math.Sqrt(d / p)
+}
+
+// Leftover is the part of a difference of two rungs of a scheme of the given
+// order that bounds what is left in the finer.
+func Leftover(order int) float64 { return leftover(order) }
+
+// Guard is the fraction of the next coarser difference that replaces one which
+// is small by accident.
+const Guard = guard
