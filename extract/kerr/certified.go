@@ -34,6 +34,9 @@ type Certified struct {
 	Spheroidal *Spheroidal
 }
 
+// order is that of the scheme: its differences rule, the kernel's moments do not.
+const order = 12
+
 // Labels ties slicing time to the labels of the two ends: u = tau - So, v = tau + Si.
 type Labels struct{ Si, So float64 }
 
@@ -105,7 +108,7 @@ func certified(tone certify.Tone, end certify.End, rungs []Rung, series func(Run
 	if len(z) < 2 {
 		a.Bar.Discretisation = 1
 	} else {
-		a.Bar.Discretisation = certify.Discretisation(z)
+		a.Bar.Discretisation = certify.Discretisation(z, order)
 	}
 	return a, nil
 }

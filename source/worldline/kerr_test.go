@@ -16,7 +16,7 @@ func kerrHole(t *testing.T, a float64) hyperboloidal.Kerr {
 	return h
 }
 
-func near(t *testing.T, what string, got, want, tol float64) {
+func kerrNear(t *testing.T, what string, got, want, tol float64) {
 	t.Helper()
 	if d := math.Abs(got - want); !(d <= tol*math.Max(math.Abs(want), 1e-300)) {
 		t.Errorf("%s = %.15g, want %.15g (relative %.1e, allowed %.1e)", what, got, want, d/math.Abs(want), tol)
@@ -31,11 +31,11 @@ func TestKerrInclinedConstants(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	near(t, "E", o.E, 0.924109612515, 1e-12)
-	near(t, "L", o.L, 2.47345309612, 2e-12)
-	near(t, "Q", o.Q, 2.03932340624, 2e-12)
-	near(t, "Omega_theta", o.OmegaTheta, 0.0588691247828, 2e-12)
-	near(t, "Omega_phi", o.OmegaPhi, 0.0650980853265, 2e-12)
+	kerrNear(t, "E", o.E, 0.924109612515, 1e-12)
+	kerrNear(t, "L", o.L, 2.47345309612, 2e-12)
+	kerrNear(t, "Q", o.Q, 2.03932340624, 2e-12)
+	kerrNear(t, "Omega_theta", o.OmegaTheta, 0.0588691247828, 2e-12)
+	kerrNear(t, "Omega_phi", o.OmegaPhi, 0.0650980853265, 2e-12)
 }
 
 // Exact formulas: Schwarzschild constants of (p, e), the separatrix p = 6 + 2e,
@@ -49,12 +49,12 @@ func TestKerrBoundAtZeroSpin(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		near(t, "E", o.E, math.Sqrt(((p-2)*(p-2)-4*e*e)/(p*(p-3-e*e))), 1e-14)
-		near(t, "L^2+Q", o.L*o.L+o.Q, p*p/(p-3-e*e), 1e-14)
-		near(t, "Omega_r", o.OmegaR, 0.0210558078, 5e-9)
-		near(t, "Omega_phi", o.OmegaPhi, math.Copysign(0.0475982489, c), 5e-9)
-		near(t, "Omega_theta", o.OmegaTheta, 0.0475982489, 5e-9)
-		near(t, "separatrix", KerrSeparatrix(h, e, c), 6+2*e, 1e-12)
+		kerrNear(t, "E", o.E, math.Sqrt(((p-2)*(p-2)-4*e*e)/(p*(p-3-e*e))), 1e-14)
+		kerrNear(t, "L^2+Q", o.L*o.L+o.Q, p*p/(p-3-e*e), 1e-14)
+		kerrNear(t, "Omega_r", o.OmegaR, 0.0210558078, 5e-9)
+		kerrNear(t, "Omega_phi", o.OmegaPhi, math.Copysign(0.0475982489, c), 5e-9)
+		kerrNear(t, "Omega_theta", o.OmegaTheta, 0.0475982489, 5e-9)
+		kerrNear(t, "separatrix", KerrSeparatrix(h, e, c), 6+2*e, 1e-12)
 	}
 }
 
@@ -65,17 +65,17 @@ func TestKerrISCO(t *testing.T) {
 		{0.9, 2.32088304176, 0.844247008006, 0.225441708835},
 	} {
 		h := kerrHole(t, c.a)
-		near(t, "ISCO", h.ISCO(), c.r, 1e-11)
+		kerrNear(t, "ISCO", h.ISCO(), c.r, 1e-11)
 		k, w, err := CircularKerr(h, c.r)
 		if err != nil {
 			t.Fatal(err)
 		}
-		near(t, "E", k.E, c.e, 1e-11)
-		near(t, "Omega", w, c.w, 1e-11)
+		kerrNear(t, "E", k.E, c.e, 1e-11)
+		kerrNear(t, "Omega", w, c.w, 1e-11)
 		// the separatrix at e = 0 is the ISCO; there dE/dr vanishes, so only half the digits are left
-		near(t, "separatrix", KerrSeparatrix(h, 0, 1), h.ISCO(), 1e-6)
-		near(t, "photon orbit", KerrPhotonOrbit(h, 1), h.LightRing(), 1e-9)
-		near(t, "retrograde photon orbit", KerrPhotonOrbit(h, -1), kerrHole(t, -c.a).LightRing(), 1e-9)
+		kerrNear(t, "separatrix", KerrSeparatrix(h, 0, 1), h.ISCO(), 1e-6)
+		kerrNear(t, "photon orbit", KerrPhotonOrbit(h, 1), h.LightRing(), 1e-9)
+		kerrNear(t, "retrograde photon orbit", KerrPhotonOrbit(h, -1), kerrHole(t, -c.a).LightRing(), 1e-9)
 	}
 }
 
@@ -95,9 +95,9 @@ func TestKerrBoundObeysGeodesic(t *testing.T) {
 			s, _ := o.At(tm)
 			pp := s.E*(s.R*s.R+c.a*c.a) - c.a*s.L
 			d := s.R*s.R - 2*s.R + c.a*c.a
-			near(t, "R", s.Wr*s.Wr/(pp*pp)+d*(s.R*s.R+s.Carter(c.a))/(pp*pp), 1, 1e-12)
+			kerrNear(t, "R", s.Wr*s.Wr/(pp*pp)+d*(s.R*s.R+s.Carter(c.a))/(pp*pp), 1, 1e-12)
 			tw := s.Twist(c.a)
-			near(t, "Theta", s.Wtheta*s.Wtheta+tw*tw+c.a*c.a*s.Cos*s.Cos, s.Carter(c.a), 1e-12)
+			kerrNear(t, "Theta", s.Wtheta*s.Wtheta+tw*tw+c.a*c.a*s.Cos*s.Cos, s.Carter(c.a), 1e-12)
 			b := (s.R*s.R + c.a*c.a) / d
 			st := s.SigmaTau(c.a, b)
 			diff := func(f func(KerrState) float64) float64 {
