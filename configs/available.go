@@ -6,15 +6,15 @@ package configs
 // written as "key value", whole sections and keys by their path.
 var features = map[string]bool{
 	"orbit.kind " + Circular:      true,
-	"orbit.kind " + Eccentric:     false,
-	"orbit.kind " + Infall:        false,
-	"orbit.kind " + Scatter:       false,
-	"orbit.kind " + Inspiral:      false,
+	"orbit.kind " + Eccentric:     true,
+	"orbit.kind " + Infall:        true,
+	"orbit.kind " + Scatter:       true,
+	"orbit.kind " + Inspiral:      true,
 	"orbit.kind " + Table:         false,
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,
 	"pulse":                       false,
-	"model":                       false,
+	"model":                       true,
 }
 
 // lacks reports whether the feature is known and switched off.

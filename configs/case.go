@@ -129,8 +129,12 @@ type Model struct {
 	Phase    string         `mapstructure:"phase"`    // "minus": h = A e^{-i phi}; "plus"
 	PhaseOf  string         `mapstructure:"phase_of"` // "particle" or "heavy-body"
 	TimeIs   string         `mapstructure:"time_is"`  // "retarded" or "particle"
-	Flux     *ModelFlux     `mapstructure:"flux"`
-	Force    *ModelForce    `mapstructure:"force"`
+	Per      string         `mapstructure:"per"`      // "mu" or "nu"
+	// MassRatio is mu/M for Per "nu"; 0 is the test-mass limit.
+	MassRatio float64     `mapstructure:"mass_ratio"`
+	Flux      *ModelFlux  `mapstructure:"flux"`
+	Force     *ModelForce `mapstructure:"force"`
+	Noise     *ModelNoise `mapstructure:"noise"` // nil: flat noise
 }
 
 // ModelWaveform names the arrays of a model's waveform.
@@ -153,6 +157,7 @@ type ModelFlux struct {
 	X               string `mapstructure:"x"`
 	Energy          string `mapstructure:"energy"`
 	AngularMomentum string `mapstructure:"angular_momentum"`
+	Against         string `mapstructure:"against"` // a sweep's table; "": the run itself
 }
 
 // ModelForce names the columns of what the dynamics lose; an empty name is
@@ -162,6 +167,16 @@ type ModelForce struct {
 	T                   string `mapstructure:"t"`
 	EnergyRate          string `mapstructure:"energy_rate"`
 	AngularMomentumRate string `mapstructure:"angular_momentum_rate"`
+	Energy              string `mapstructure:"energy"`           // E(t), where there is no rate
+	AngularMomentum     string `mapstructure:"angular_momentum"` // L(t), where there is no rate
+}
+
+// ModelNoise names the columns of a detector's noise curve.
+type ModelNoise struct {
+	File      string  `mapstructure:"file"`
+	Frequency string  `mapstructure:"frequency"`  // Hz
+	Density   string  `mapstructure:"density"`    // amplitude spectral density, 1/sqrt(Hz)
+	TotalMass float64 `mapstructure:"total_mass"` // solar masses
 }
 
 // Align is how a model is shifted before it is compared: not at all, or by

@@ -59,13 +59,23 @@ func (r Reader) Read(path string) (*Case, error) {
 func (r Reader) Parse(path string, data []byte) (*Case, error) {
 	root, err := parse(data)
 	if err != nil {
-		var at *syntaxError
-		line := 0
-		if errors.As(err, &at) {
-			line = at.line
-		}
-		return nil, Faults{{File: path, Line: line, Origin: OriginFile, Says: err.Error()}}
+		return nil, unparsed(path, err)
 	}
+	return r.resolve(path, root)
+}
+
+// unparsed makes the fault of a file that is no YAML.
+func unparsed(path string, err error) Faults {
+	var at *syntaxError
+	line := 0
+	if errors.As(err, &at) {
+		line = at.line
+	}
+	return Faults{{File: path, Line: line, Origin: OriginFile, Says: err.Error()}}
+}
+
+// resolve is Parse after the YAML has been read.
+func (r Reader) resolve(path string, root *yaml.Node) (*Case, error) {
 	s := newSheet(path, func(l layer, file string) (string, error) {
 		if l == fileLayer && !filepath.IsAbs(file) {
 			file = filepath.Join(filepath.Dir(path), file)

@@ -166,14 +166,23 @@ var schema = []key{
 		doc: "Whose azimuth the phase follows; odd m change sign between the two."},
 	{path: "model.time_is", form: choice, choices: []string{"retarded", "particle"}, preset: "retarded",
 		doc: "Retarded time, or the particle's (then u = t - r_* is applied)."},
+	{path: "model.per", form: choice, choices: []string{"mu", "nu"}, preset: "mu", doc: "Amplitudes per mass ratio mu/M or per symmetric mass ratio nu."},
+	{path: "model.mass_ratio", form: real, bounds: between(0, 1), preset: 0.0, doc: "mu/M, for `per: nu`; 0 is the test-mass limit, where both are the same."},
 	{path: "model.flux.file", form: pathForm, need: []string{always}, doc: "File with a flux curve."},
 	{path: "model.flux.x", form: text, preset: "x", doc: "Its column of x = (M Omega)^(2/3)."},
 	{path: "model.flux.energy", form: text, doc: "Its column of energy flux."},
 	{path: "model.flux.angular_momentum", form: text, doc: "Its column of angular-momentum flux."},
+	{path: "model.flux.against", form: pathForm, doc: "Table of a sweep over circular orbits to hold the curve against; else the run itself."},
 	{path: "model.force.file", form: pathForm, need: []string{always}, doc: "File with what the dynamics lose."},
 	{path: "model.force.t", form: text, preset: "t", doc: "Its column of time."},
 	{path: "model.force.energy_rate", form: text, doc: "Its column of dE/dt."},
 	{path: "model.force.angular_momentum_rate", form: text, doc: "Its column of dL/dt."},
+	{path: "model.force.energy", form: text, doc: "Instead of a rate: its column of E(t) per mu, to be differentiated."},
+	{path: "model.force.angular_momentum", form: text, doc: "Instead of a rate: its column of L(t) per mu M, to be differentiated."},
+	{path: "model.noise.file", form: pathForm, need: []string{always}, doc: "File with a detector's noise curve; without the section the noise is flat."},
+	{path: "model.noise.frequency", form: text, preset: "frequency", doc: "Its column of frequency, Hz."},
+	{path: "model.noise.density", form: text, preset: "density", doc: "Its column of amplitude spectral density, 1/sqrt(Hz)."},
+	{path: "model.noise.total_mass", form: real, bounds: above(0), need: []string{always}, doc: "Mass of the hole in solar masses, which scales frequencies."},
 	{path: "align", form: shift, preset: Align{}, doc: "`none`, or `{window: [u1, u2]}`: one time and one phase shift, minimised there."},
 
 	{path: "output.every", form: real, bounds: between(1e-3, 1e4), preset: 0.5, doc: "Sampling of stored series in u, M."},
@@ -228,7 +237,7 @@ var sections, optional = func() (list []string, optional map[string]bool) {
 		list = append(list, up...)
 	}
 	return list, map[string]bool{"orbit": true, "pulse": true, "model": true,
-		"model.waveform": true, "model.flux": true, "model.force": true}
+		"model.waveform": true, "model.flux": true, "model.force": true, "model.noise": true}
 }()
 
 // find returns the row of a path, nil where there is none.

@@ -9,6 +9,7 @@ import (
 
 	"nullmark/equations"
 	"nullmark/grid"
+	"nullmark/grid/march"
 	"nullmark/grid/stencil"
 	"nullmark/hyperboloidal"
 )
@@ -33,11 +34,11 @@ type Forcing interface {
 // K = 1/(2-L) in a layer and 1 between, from
 // -d_t^2 Psi + d_{r_*}^2 Psi - V Psi = S, forcing = -K S/L.
 // The state is [Psi block][Pi block], each n*grid.Lanes numbers, point by point.
-// It implements march.Linear. A Master is not safe for concurrent use; its
+// It implements march.SecondOrder. A Master is not safe for concurrent use; its
 // geometry tables are never written after NewMaster and may be shared.
 type Master struct {
 	geo     *Geometry
-	pot     []float64 // -K V/L, per point and lane
+	diag    []float64 // -K V/L and the row's centre weight, per point and lane
 	forcing Forcing
 }
 
@@ -47,14 +48,30 @@ type Geometry struct {
 	Grid   grid.Grid
 	Order  int
 	Points []hyperboloidal.Point
-	// rows below flatLo and from flatHi on carry weights of their own
-	flatLo, flatHi int
-	first          []int       // first column of a row
-	psi, pi        [][]float64 // weights on Psi and Pi
-	half           int
-	d2             []float64 // centred second-difference weights, half+1: 0..half
-	k              []float64 // K
+	ranges []rows // every row once, in order
+	half   int
+	centre []float64  // what a row adds to the potential in diag
+	d1     [6]float64 // centred first-difference weights 1..6 (order 12)
+	d2     []float64  // centred second-difference weights, half+1: 0..half
+	k      []float64  // K
 }
+
+// rows is a range [lo, hi) of grid points that one kernel serves.
+type rows struct {
+	form         form
+	lo, hi       int
+	w            []float64 // weights as the kernel wants them
+	width        int       // of rowsAny
+	first, slide int
+}
+
+type form uint8
+
+const (
+	flatRows    form = iota // between the layers: the plain wave operator
+	centredRows             // order 12 in a layer
+	anyRows                 // another order in a layer, and the ends
+)
 
 // NewGeometry samples the slicing on g and combines it with differences of the
 // given even order. The grid must span [Si, So].
@@ -72,43 +89,97 @@ func NewGeometry(s hyperboloidal.Layers, g grid.Grid, order int) (*Geometry, err
 	}
 	geo := &Geometry{Grid: g, Order: order, Points: s.Sample(g.Rho()), half: d2.Half}
 	n := g.N
-	geo.first = make([]int, n)
-	geo.psi = make([][]float64, n)
-	geo.pi = make([][]float64, n)
 	geo.k = make([]float64, n)
+	geo.centre = make([]float64, n)
 	geo.d2 = d2.Centre[d2.Half:]
-	geo.flatLo, geo.flatHi = n, 0
+	if geo.half == 6 {
+		geo.d1 = [6]float64(d1.Centre[7:])
+	}
+	flatLo, flatHi := flatPart(geo.Points, d2.Half)
 	for i, p := range geo.Points {
 		geo.k[i] = 1 / (2 - p.Boost)
-		if flat(p) {
-			geo.k[i] = 1
-			if i >= d2.Half && i < n-d2.Half {
-				geo.flatLo = min(geo.flatLo, i)
-				geo.flatHi = max(geo.flatHi, i+1)
-				continue
-			}
+		inner := i >= d2.Half && i < n-d2.Half
+		switch {
+		case i >= flatLo && i < flatHi:
+			geo.centre[i] = geo.d2[0]
+			geo.add(rows{form: flatRows, lo: i, hi: i + 1})
+		case inner && geo.half == 6:
+			geo.addCentred(i, p)
+		default:
+			geo.addAny(i, p, d1, d2)
 		}
-		f1, w1 := d1.Row(i, n)
-		f2, w2 := d2.Row(i, n)
-		lo := min(f1, f2, i)
-		hi := max(f1+len(w1), f2+len(w2), i+1)
-		psi := make([]float64, hi-lo)
-		pi := make([]float64, hi-lo)
-		k := geo.k[i]
-		for j, w := range w2 {
-			psi[f2-lo+j] += k * p.Boost * w
-		}
-		for j, w := range w1 {
-			psi[f1-lo+j] += k * p.BoostPrime * w
-			pi[f1-lo+j] += -2 * k * p.Height * w
-		}
-		pi[i-lo] += -k * p.HeightPrime
-		geo.first[i], geo.psi[i], geo.pi[i] = lo, psi, pi
-	}
-	if geo.flatHi <= geo.flatLo {
-		geo.flatLo, geo.flatHi = n, n
 	}
 	return geo, nil
+}
+
+// add appends a row, to the last range where that is of the same sort and goes
+// on in the same way.
+func (g *Geometry) add(r rows) {
+	if len(g.ranges) > 0 {
+		l := &g.ranges[len(g.ranges)-1]
+		same := l.form == r.form
+		if r.form == anyRows && same {
+			slide := r.first - (l.first + (l.hi-l.lo-1)*l.slide)
+			same = l.width == r.width && (slide == 0 || slide == 1) && (l.hi-l.lo == 1 || slide == l.slide)
+			if same {
+				l.slide = slide
+			}
+		}
+		if same {
+			l.hi = r.hi
+			l.w = append(l.w, r.w...)
+			return
+		}
+	}
+	g.ranges = append(g.ranges, r)
+}
+
+// addCentred appends a centred row of order 12; see rows13 for the layout. The
+// first difference has no centre weight, and weights of opposite sign.
+func (g *Geometry) addCentred(i int, p hyperboloidal.Point) {
+	k := g.k[i]
+	var w [rowStride]float64
+	for q := 1; q <= 6; q++ {
+		even, odd := k*p.Boost*g.d2[q], k*p.BoostPrime*g.d1[q-1]
+		w[6-q], w[5+q] = even-odd, even+odd
+	}
+	w[12], w[13] = -2*k*p.Height, -k*p.HeightPrime
+	g.centre[i] = k * p.Boost * g.d2[0]
+	g.add(rows{form: centredRows, lo: i, hi: i + 1, w: w[:]})
+}
+
+// addAny appends a row of any shape; see rowsAny for the layout.
+func (g *Geometry) addAny(i int, p hyperboloidal.Point, d1, d2 *stencil.Operator) {
+	n, k := g.Grid.N, g.k[i]
+	f1, w1 := d1.Row(i, n)
+	f2, w2 := d2.Row(i, n)
+	lo := min(f1, f2, i)
+	hi := max(f1+len(w1), f2+len(w2), i+1)
+	w := make([]float64, 2*(hi-lo))
+	for j, v := range w2 {
+		w[2*(f2-lo+j)] += k * p.Boost * v
+	}
+	for j, v := range w1 {
+		w[2*(f1-lo+j)] += k * p.BoostPrime * v
+		w[2*(f1-lo+j)+1] += -2 * k * p.Height * v
+	}
+	w[2*(i-lo)+1] += -k * p.HeightPrime
+	g.add(rows{form: anyRows, lo: i, hi: i + 1, w: w, width: hi - lo, first: lo})
+}
+
+// flatPart returns the longest run of flat points with half neighbours on both
+// sides. Where a layer sets in smoothly, roundings make single points of it
+// flat, which are better served as part of the layer.
+func flatPart(points []hyperboloidal.Point, half int) (lo, hi int) {
+	from := half
+	for i := half; i < len(points)-half; i++ {
+		if !flat(points[i]) {
+			from = i + 1
+		} else if i+1-from > hi-lo {
+			lo, hi = from, i+1
+		}
+	}
+	return lo, hi
 }
 
 func flat(p hyperboloidal.Point) bool {
@@ -121,11 +192,12 @@ func NewMaster(geo *Geometry, lanes []equations.Potential, forcing Forcing) *Mas
 	if len(lanes) > grid.Lanes {
 		panic(fmt.Sprintf("semi: %d fields in a block of %d lanes", len(lanes), grid.Lanes))
 	}
-	m := &Master{geo: geo, forcing: forcing, pot: make([]float64, geo.Grid.N*grid.Lanes)}
+	m := &Master{geo: geo, forcing: forcing, diag: make([]float64, geo.Grid.N*grid.Lanes)}
 	for i, p := range geo.Points {
-		for q, v := range lanes {
-			if v != nil {
-				m.pot[i*grid.Lanes+q] = -geo.k[i] * p.Stretch * v.Reduced(p.X)
+		for q := range grid.Lanes {
+			m.diag[i*grid.Lanes+q] = geo.centre[i]
+			if q < len(lanes) && lanes[q] != nil {
+				m.diag[i*grid.Lanes+q] += -geo.k[i] * p.Stretch * lanes[q].Reduced(p.X)
 			}
 		}
 	}
@@ -158,15 +230,49 @@ func (m *Master) Apply(dst, u []float64) {
 		panic(fmt.Sprintf("semi: states of length %d and %d, want %d", len(dst), len(u), 2*n))
 	}
 	copy(dst[:n], u[n:])
-	g := m.geo
-	psi, pi, out := u[:n], u[n:], dst[n:]
-	rows(g, out, psi, pi, m.pot, 0, min(g.flatLo, g.Grid.N))
-	if g.half == 6 {
-		flat12(out, psi, m.pot, (*[7]float64)(g.d2), g.flatLo, g.flatHi)
-	} else {
-		flatAny(out, psi, m.pot, g.d2, g.flatLo, g.flatHi)
+	m.Accelerate(dst[n:], u[:n], u[n:], nil)
+}
+
+// Accelerate implements march.SecondOrder: x is Psi and y is Pi.
+func (m *Master) Accelerate(dst, x, y []float64, sum *march.Sum) {
+	n := m.geo.Grid.N * grid.Lanes
+	if len(dst) != n || len(x) != n || len(y) != n {
+		panic(fmt.Sprintf("semi: blocks of length %d, %d and %d, want %d", len(dst), len(x), len(y), n))
 	}
-	rows(g, out, psi, pi, m.pot, max(g.flatHi, min(g.flatLo, g.Grid.N)), g.Grid.N)
+	for k := range m.geo.ranges {
+		r := &m.geo.ranges[k]
+		if sum == nil {
+			m.apply(r, dst, x, y, r.lo, r.hi)
+			continue
+		}
+		// The sum follows piece by piece, while the piece is in the cache.
+		for lo := r.lo; lo < r.hi; lo += piece {
+			hi := min(lo+piece, r.hi)
+			m.apply(r, dst, x, y, lo, hi)
+			sum.Add(x, y, lo*grid.Lanes, hi*grid.Lanes)
+		}
+	}
+}
+
+// piece is how many points Accelerate does between two parts of a sum: eight
+// arrays of so many points take half of a small first-level cache.
+const piece = 32
+
+// apply runs the kernel of a range on its rows lo..hi-1.
+func (m *Master) apply(r *rows, dst, psi, pi []float64, lo, hi int) {
+	skip := lo - r.lo
+	switch r.form {
+	case flatRows:
+		if m.geo.half == 6 {
+			active.flat12(dst, psi, m.diag, (*[7]float64)(m.geo.d2), lo, hi)
+		} else {
+			active.flatAny(dst, psi, m.diag, m.geo.d2, lo, hi)
+		}
+	case centredRows:
+		active.rows13(dst, psi, pi, m.diag, r.w[skip*rowStride:], &m.geo.d1, lo, hi)
+	case anyRows:
+		active.rowsAny(dst, psi, pi, m.diag, r.w[skip*2*r.width:], r.width, r.first+skip*r.slide, r.slide, lo, hi)
+	}
 }
 
 // RHS implements march.System.
@@ -186,7 +292,12 @@ func (m *Master) Prepare(t, dt float64) {
 
 // AddForce implements march.Linear.
 func (m *Master) AddForce(dst []float64, j int, scale float64) {
+	m.AddAcceleration(dst[len(dst)/2:], j, scale)
+}
+
+// AddAcceleration implements march.SecondOrder.
+func (m *Master) AddAcceleration(dst []float64, j int, scale float64) {
 	if m.forcing != nil {
-		m.forcing.AddDerivative(dst[len(dst)/2:], j, scale)
+		m.forcing.AddDerivative(dst, j, scale)
 	}
 }

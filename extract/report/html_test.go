@@ -108,87 +108,94 @@ func render(t *testing.T, b *result.Bundle) []byte {
 }
 
 func TestPageIsWellFormedAndSelfContained(t *testing.T) {
-	outside := regexp.MustCompile(`(?i)(https?:|//[a-z]|@import|<script|javascript:|\son[a-z]+=|<iframe|<object|<embed|<link|url\((?:[^#]))`)
 	for name, b := range kinds() {
-		t.Run(name, func(t *testing.T) {
-			page := render(t, b)
-			root := parsePage(t, page)
-			bare := strings.NewReplacer(`xmlns="http://www.w3.org/1999/xhtml"`, "", `xmlns="http://www.w3.org/2000/svg"`, "").Replace(string(page))
-			if hit := outside.FindString(bare); hit != "" {
-				t.Errorf("the page refers outside itself or runs something: %q", hit)
-			}
-			if len(page) >= 1<<20 {
-				t.Errorf("the page has %d bytes, want less than one megabyte", len(page))
-			}
-			for _, bad := range []string{"NaN", "Inf", "%!", "ZgotmplZ", "<no value>", "<nil>"} {
-				if strings.Contains(string(page), bad) {
-					t.Errorf("the page contains %q", bad)
-				}
-			}
-			seen := map[string]bool{}
-			var walk func(n *node)
-			walk = func(n *node) {
-				if id := n.attrs["id"]; id != "" {
-					if seen[id] {
-						t.Errorf("id %q occurs twice", id)
-					}
-					seen[id] = true
-				}
-				for _, k := range n.kids {
-					walk(k)
-				}
-			}
-			walk(root)
-			for _, use := range regexp.MustCompile(`(?:url\(|href=")#([^)"]+)`).FindAllStringSubmatch(string(page), -1) {
-				if !seen[use[1]] {
-					t.Errorf("reference to #%s, which is not on the page", use[1])
-				}
-			}
-		})
+		t.Run(name, func(t *testing.T) { wellFormed(t, render(t, b)) })
 	}
 }
 
 func TestPageIsAccessible(t *testing.T) {
 	for name, b := range kinds() {
-		t.Run(name, func(t *testing.T) {
-			root := parsePage(t, render(t, b))
-			if n := len(root.all("h1")); n != 1 {
-				t.Errorf("%d main headings, want one", n)
+		t.Run(name, func(t *testing.T) { accessible(t, parsePage(t, render(t, b))) })
+	}
+}
+
+// wellFormed fails unless the page is strict XML, refers to nothing outside
+// itself, runs nothing and has no id twice.
+func wellFormed(t *testing.T, page []byte) {
+	t.Helper()
+	outside := regexp.MustCompile(`(?i)(https?:|//[a-z]|@import|<script|javascript:|\son[a-z]+=|<iframe|<object|<embed|<link|url\((?:[^#]))`)
+	root := parsePage(t, page)
+	bare := strings.NewReplacer(`xmlns="http://www.w3.org/1999/xhtml"`, "", `xmlns="http://www.w3.org/2000/svg"`, "").Replace(string(page))
+	if hit := outside.FindString(bare); hit != "" {
+		t.Errorf("the page refers outside itself or runs something: %q", hit)
+	}
+	if len(page) >= 1<<20 {
+		t.Errorf("the page has %d bytes, want less than one megabyte", len(page))
+	}
+	for _, bad := range []string{"NaN", "Inf", "%!", "ZgotmplZ", "<no value>", "<nil>"} {
+		if strings.Contains(string(page), bad) {
+			t.Errorf("the page contains %q", bad)
+		}
+	}
+	seen := map[string]bool{}
+	var walk func(n *node)
+	walk = func(n *node) {
+		if id := n.attrs["id"]; id != "" {
+			if seen[id] {
+				t.Errorf("id %q occurs twice", id)
 			}
-			for _, tab := range root.all("table") {
-				if len(tab.all("caption")) != 1 || tab.all("caption")[0].words() == "" {
-					t.Errorf("table %q has no caption", tab.attrs["id"])
-				}
-				width := len(tab.all("thead")[0].all("th"))
-				rows := tab.all("tbody")[0].all("tr")
-				if len(rows) == 0 {
-					t.Errorf("table %q has no rows: an empty frame", tab.attrs["id"])
-				}
-				for _, r := range rows {
-					if got := len(r.all("th")) + len(r.all("td")); got != width {
-						t.Errorf("table %q: a row of %d cells under %d headings", tab.attrs["id"], got, width)
-					}
-				}
+			seen[id] = true
+		}
+		for _, k := range n.kids {
+			walk(k)
+		}
+	}
+	walk(root)
+	for _, use := range regexp.MustCompile(`(?:url\(|href=")#([^)"]+)`).FindAllStringSubmatch(string(page), -1) {
+		if !seen[use[1]] {
+			t.Errorf("reference to #%s, which is not on the page", use[1])
+		}
+	}
+}
+
+// accessible fails unless tables and pictures say what they are.
+func accessible(t *testing.T, root *node) {
+	t.Helper()
+	if n := len(root.all("h1")); n != 1 {
+		t.Errorf("%d main headings, want one", n)
+	}
+	for _, tab := range root.all("table") {
+		if len(tab.all("caption")) != 1 || tab.all("caption")[0].words() == "" {
+			t.Errorf("table %q has no caption", tab.attrs["id"])
+		}
+		width := len(tab.all("thead")[0].all("th"))
+		rows := tab.all("tbody")[0].all("tr")
+		if len(rows) == 0 {
+			t.Errorf("table %q has no rows: an empty frame", tab.attrs["id"])
+		}
+		for _, r := range rows {
+			if got := len(r.all("th")) + len(r.all("td")); got != width {
+				t.Errorf("table %q: a row of %d cells under %d headings", tab.attrs["id"], got, width)
 			}
-			for _, svg := range root.all("svg") {
-				for _, id := range strings.Fields(svg.attrs["aria-labelledby"]) {
-					if n := svg.byID(id); n == nil || n.words() == "" {
-						t.Errorf("picture without the description %q", id)
-					}
-				}
-				if svg.attrs["role"] != "img" || svg.attrs["aria-labelledby"] == "" {
-					t.Error("a picture has no role or no description")
-				}
-				if len(svg.all("text")) == 0 {
-					t.Error("a picture has no text")
-				}
+		}
+	}
+	for _, svg := range root.all("svg") {
+		for _, id := range strings.Fields(svg.attrs["aria-labelledby"]) {
+			if n := svg.byID(id); n == nil || n.words() == "" {
+				t.Errorf("picture without the description %q", id)
 			}
-			for _, sec := range root.all("section") {
-				if len(sec.all("table"))+len(sec.all("figure"))+len(sec.all("dl"))+len(sec.all("ul"))+len(sec.all("pre")) == 0 {
-					t.Errorf("section %q is empty", sec.attrs["aria-labelledby"])
-				}
-			}
-		})
+		}
+		if svg.attrs["role"] != "img" || svg.attrs["aria-labelledby"] == "" {
+			t.Error("a picture has no role or no description")
+		}
+		if len(svg.all("text")) == 0 {
+			t.Error("a picture has no text")
+		}
+	}
+	for _, sec := range root.all("section") {
+		if len(sec.all("table"))+len(sec.all("figure"))+len(sec.all("dl"))+len(sec.all("ul"))+len(sec.all("pre")) == 0 {
+			t.Errorf("section %q is empty", sec.attrs["aria-labelledby"])
+		}
 	}
 }
 

@@ -23,6 +23,9 @@ type RungeKutta struct {
 	k     [][]float64
 	y     []float64
 	limit float64
+	// the stages that a sum takes, and their factors
+	terms  [][]float64
+	coeffs []float64
 }
 
 // NewRungeKutta returns the stepper for states of the given length. It panics
@@ -32,7 +35,8 @@ func NewRungeKutta(sys System, tab *Tableau, length int) *RungeKutta {
 	if len(tab.C) != n || len(tab.A) != n {
 		panic(fmt.Sprintf("march: tableau %s has %d, %d, %d rows", tab.Name, len(tab.C), len(tab.A), n))
 	}
-	rk := &RungeKutta{sys: sys, tab: tab, y: make([]float64, length)}
+	rk := &RungeKutta{sys: sys, tab: tab, y: make([]float64, length),
+		terms: make([][]float64, 0, n), coeffs: make([]float64, 0, n)}
 	for i := 0; i < n; i++ {
 		if len(tab.A[i]) > i {
 			panic(fmt.Sprintf("march: tableau %s is not explicit in stage %d", tab.Name, i+1))
@@ -65,27 +69,23 @@ func (s *RungeKutta) Step(u []float64, t, dt float64) {
 		y := u
 		if i > 0 {
 			y = s.y
-			copy(y, u)
-			for j, a := range s.tab.A[i] {
-				if a != 0 {
-					axpy(y, s.k[j], a*dt)
-				}
-			}
+			s.add(y, u, s.tab.A[i], dt)
 		}
 		s.sys.RHS(s.k[i], y, t+s.tab.C[i]*dt)
 	}
-	for i, b := range s.tab.B {
-		if b != 0 {
-			axpy(u, s.k[i], b*dt)
-		}
-	}
+	s.add(u, u, s.tab.B, dt)
 }
 
-func axpy(y, x []float64, a float64) {
-	y = y[:len(x)]
-	for i, v := range x {
-		y[i] += a * v
+// add writes u + dt sum_j a_j k_j into y, which may be u, in one sweep.
+func (s *RungeKutta) add(y, u, a []float64, dt float64) {
+	s.terms, s.coeffs = s.terms[:0], s.coeffs[:0]
+	for j, v := range a {
+		if v != 0 {
+			s.terms = append(s.terms, s.k[j])
+			s.coeffs = append(s.coeffs, v*dt)
+		}
 	}
+	active.combine(y, u, s.terms, s.coeffs)
 }
 
 // Order implements Stepper.

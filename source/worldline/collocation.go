@@ -129,11 +129,17 @@ type march struct {
 
 const (
 	tailTolerance = 1e-17 // of the scale, for the last coefficients of an increment
-	noise         = 4e-16 // relative round-off of a rate
+	noise         = 1e-15 // relative round-off of a rate
 )
+
+// maxPieces bounds the memory of a solution (about 0.6 kB a piece).
+const maxPieces = 1 << 20
 
 // step adds one piece, no longer than limit in time.
 func (m *march) step(limit float64) error {
+	if len(m.dense.pieces) > maxPieces {
+		return m.failure("it takes too many pieces: the motion is too long or too extreme")
+	}
 	tb := tables()
 	nv := m.sys.vars()
 	var f [nodes][maxVars]float64

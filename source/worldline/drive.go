@@ -27,6 +27,18 @@ type PostNewtonian struct{}
 
 // Ratio implements Flux.
 func (PostNewtonian) Ratio(x float64) float64 {
+	v := math.Sqrt(x)
+	c, l := series()
+	lv := math.Log(v)
+	sum := 0.0
+	for k := len(c) - 1; k >= 0; k-- {
+		sum = sum*v + (c[k] + l[k]*lv)
+	}
+	return sum
+}
+
+// series returns the coefficients of v^k and of v^k ln v.
+func series() (c, l [12]float64) {
 	const (
 		pi  = math.Pi
 		pi2 = pi * pi
@@ -34,27 +46,24 @@ func (PostNewtonian) Ratio(x float64) float64 {
 		ln2 = math.Ln2
 		ln3 = 1.0986122886681098
 	)
-	v := math.Sqrt(x)
-	lv := math.Log(v)
-	c := [...]float64{
+	c = [...]float64{
 		1,
 		0,
 		-1247.0 / 336,
 		4 * pi,
 		-44711.0 / 9072,
 		-8191.0 / 672 * pi,
-		6643739519.0/69854400 - 1712.0/105*g + 16.0/3*pi2 - 3424.0/105*ln2 - 1712.0/105*lv,
+		6643739519.0/69854400 - 1712.0/105*g + 16.0/3*pi2 - 3424.0/105*ln2,
 		-16285.0 / 504 * pi,
-		-323105549467.0/3178375200 + 232597.0/4410*g - 1369.0/126*pi2 + 39931.0/294*ln2 - 47385.0/1568*ln3 + 232597.0/4410*lv + 1,
-		265978667519.0/745113600*pi - 6848.0/105*pi*g - 13696.0/105*pi*ln2 - 6848.0/105*pi*lv,
-		-2500861660823683.0/2831932303200 + 916628467.0/7858620*g - 424223.0/6804*pi2 - 83217611.0/1122660*ln2 + 47385.0/196*ln3 + 916628467.0/7858620*lv,
-		8399309750401.0/101708006400*pi + 177293.0/1176*pi*g + 8521283.0/17640*pi*ln2 - 142155.0/784*pi*ln3 + 177293.0/1176*pi*lv,
+		-323105549467.0/3178375200 + 232597.0/4410*g - 1369.0/126*pi2 + 39931.0/294*ln2 - 47385.0/1568*ln3 + 1,
+		265978667519.0/745113600*pi - 6848.0/105*pi*g - 13696.0/105*pi*ln2,
+		-2500861660823683.0/2831932303200 + 916628467.0/7858620*g - 424223.0/6804*pi2 - 83217611.0/1122660*ln2 + 47385.0/196*ln3,
+		8399309750401.0/101708006400*pi + 177293.0/1176*pi*g + 8521283.0/17640*pi*ln2 - 142155.0/784*pi*ln3,
 	}
-	sum := 0.0
-	for k := len(c) - 1; k >= 0; k-- {
-		sum = sum*v + c[k]
+	l = [...]float64{
+		6: -1712.0 / 105, 8: 232597.0 / 4410, 9: -6848.0 / 105 * pi, 10: 916628467.0 / 7858620, 11: 177293.0 / 1176 * pi,
 	}
-	return sum
+	return c, l
 }
 
 // Uncertainty returns 0: the series is taken as given.
@@ -171,9 +180,10 @@ func rational(x, y, w []float64, at float64) float64 {
 
 // Ratio implements Flux.
 func (f *FluxTable) Ratio(x float64) float64 {
-	at := -saturate(-saturate(x, f.last, f.width), -f.first, f.width)
-	// the ends themselves are reached only up to round-off
-	at = min(max(at, f.first), f.last)
+	at := min(saturate(x, f.last, f.width), f.last)
+	// outside the outermost row the torque matters only deep in the plunge,
+	// where it is next to nothing: the ratio is held a little beyond that row
+	at = -saturate(-at, -0.97*f.first, 0.003*f.first)
 	return rational(f.x, f.ratio, f.weight, at) * PostNewtonian{}.Ratio(x)
 }
 

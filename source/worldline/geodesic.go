@@ -53,10 +53,14 @@ func (g *geodesic) radial(y, r float64) float64 {
 }
 
 // potentialSlope returns d/dr[f(1+L^2/r^2)] = (2/r^4)(r^2 - L^2 r + 3 L^2), with
-// the square completed; lam = L^2-12.
+// the square completed where the two circular orbits of this L are close;
+// lam = L^2-12.
 func potentialSlope(y, r, L2, lam float64) float64 {
-	d := y + (2 - L2/2)
 	r2 := r * r
+	if L2 > 24 {
+		return 2 * (r2 - L2*(y-1)) / (r2 * r2)
+	}
+	d := y + (2 - L2/2)
 	return 2 * (d*d - L2*lam/4) / (r2 * r2)
 }
 
@@ -108,6 +112,13 @@ type turning struct {
 }
 
 func (turning) vars() int { return 3 }
+
+func (s *turning) scale(chart int8, x *[maxVars]float64, i int) float64 {
+	if i == 2 {
+		return 0.1 * max(1, s.g.E)
+	}
+	return s.radialCharts.scale(chart, x, i)
+}
 
 func (s *turning) rates(chart int8, x, d *[maxVars]float64) bool {
 	y, r, ok := radius(chart, x[0])

@@ -65,9 +65,6 @@ func (s *driven) rates(chart int8, x, d *[maxVars]float64) bool {
 	return !math.IsNaN(d[3])
 }
 
-// maxPieces bounds the memory of a solution (about 0.6 kB a piece).
-const maxPieces = 1 << 20
-
 // NewInspiral returns an inspiral that starts at From without eccentricity (on
 // the slow manifold: see slow) and runs through the plunge to the horizon.
 func NewInspiral(o InspiralOrbit) (*Inspiral, error) {
@@ -106,11 +103,11 @@ func NewInspiral(o InspiralOrbit) (*Inspiral, error) {
 	}
 	m := &march{sys: &driven{q: q}, h: 1, hi: hi, dense: new(dense)}
 	for !(m.chart == chartLog && m.hi[0] <= deepest) {
+		if len(m.dense.pieces) == maxPieces {
+			return nil, m.failure("the inspiral takes too long: start further in or use a larger mass_ratio")
+		}
 		if err := m.step(math.Inf(1)); err != nil {
 			return nil, err
-		}
-		if len(m.dense.pieces) > maxPieces {
-			return nil, m.failure("the inspiral takes too long: start further in or use a larger mass_ratio")
 		}
 		if m.chart == chartY && m.hi[0] > 1.5*y+10 {
 			return nil, m.failure("the particle moves outwards: the driving flux is not that of an inspiral")

@@ -8,7 +8,6 @@ import (
 	"sync"
 	"testing"
 
-	"gonum.org/v1/gonum/integrate/quad"
 	"gonum.org/v1/gonum/mathext"
 )
 
@@ -49,21 +48,6 @@ func marker(t *testing.T, w Worldline, name string) Marker {
 	}
 	t.Fatalf("%s has no marker %q", w.Kind(), name)
 	return Marker{}
-}
-
-// legendre integrates f over [a,b] with Gauss–Legendre panels.
-func legendre(f func(float64) float64, a, b float64, panels int) float64 {
-	if a > b {
-		return -legendre(f, b, a, panels)
-	}
-	sum, low := 0.0, 0.0
-	for i := range panels {
-		x, y := a+(b-a)*float64(i)/float64(panels), a+(b-a)*float64(i+1)/float64(panels)
-		var e float64
-		sum, e = twoSum(sum, quad.Fixed(f, x, y, 24, quad.Legendre{}, 1))
-		low += e
-	}
-	return sum + low
 }
 
 func TestCircular(t *testing.T) {
@@ -172,7 +156,7 @@ func TestPlungeFromISCO(t *testing.T) {
 	for _, r := range []float64{5.9, 5.5, 5, 4, 3, 2.5, 2.01} {
 		// substitution r = 6-1/z^2 evens the integrand out
 		z0, z1 := 1/math.Sqrt(6-5.95), 1/math.Sqrt(6-r)
-		at := legendre(func(z float64) float64 { return pace(6-1/(z*z)) * -2 / (z * z * z) }, z0, z1, 60)
+		at := legendre(func(z float64) float64 { return pace(6-1/(z*z)) * -2 / (z * z * z) }, z0, z1, 3000)
 		c.At(at, &s)
 		near(t, "r of the plunge", s.R, r, 3e-12) // 6-5.95 is rounded: 1e-15/0.05 of 500 M
 		near(t, "phi of the plunge", s.Phi, turnAt(5.95)-turnAt(r), 2e-12)
@@ -180,7 +164,9 @@ func TestPlungeFromISCO(t *testing.T) {
 	horizon := marker(t, c, MarkHorizon)
 	for _, later := range []float64{0, 30, 100, 900, 3000} {
 		c.At(horizon.T+later, &s)
-		near(t, "r_* after the horizon marker", s.Rstar, -30-later, 1e-7) // -E: light to O(y)
+		// to first order in y = 2.25e-7 the particle lags behind light by this
+		lag := (horizon.R - 2) * (1 + 12.0/4) / (2 * 8.0 / 9) * (1 - math.Exp(-later/2))
+		near(t, "r_* after the horizon marker", s.Rstar, -30-later+lag, 1e-12+1e-15*later)
 		if s.P >= 0 || math.IsNaN(s.Y) || s.Y < 0 {
 			t.Errorf("bad state near the horizon: %+v", s)
 		}
@@ -267,11 +253,11 @@ func TestScatter(t *testing.T) {
 		near(t, "drift", c.Drift(), 0, 2e-15)
 		// t and phi by quadrature in r = peri + s^2
 		half := math.Sqrt(150 - peri.R)
+		x1, x2, x3 := g.roots(1 / must3(g.extremes()))
 		slope := func(f func(r float64) float64) func(float64) float64 {
 			return func(z float64) float64 {
 				r := peri.R + z*z
 				// p^2 divided by (x2-x), from the sums of roots
-				x1, x2, x3 := g.roots(1 / must3(g.extremes()))
 				x := 1 / r
 				p2 := 2 * g.L2 * (x - x1) * (x3 - x) * x * x2 // times z^2
 				return 2 * f(r) / math.Sqrt(p2)
@@ -286,7 +272,6 @@ func TestScatter(t *testing.T) {
 		near(t, "time of periastron", peri.T, dt, amplify*2e-12)
 		near(t, "azimuth of periastron", s.Phi-0.125, dphi, amplify*1e-12)
 		// scattering angle by Legendre's incomplete integral, gonum's mathext
-		x1, x2, x3 := g.roots(1 / must3(g.extremes()))
 		mm := (x2 - x1) / (x3 - x1)
 		psi := math.Asin(math.Sqrt(-x1 / (x2 - x1)))
 		want := 2*math.Sqrt(2/(x3-x1))*(mathext.CompleteK(mm)-mathext.EllipticF(psi, mm)) - math.Pi
@@ -336,12 +321,16 @@ func TestDifferencesSeeNoJoints(t *testing.T) {
 			_, om, pd := s.Rates()
 			return [3]float64{s.P / s.E, om, pd}
 		}
-		end := 700.0
+		const end, step = 700.0, 3.0 / 64 // binary: no rounding of the sample times
 		worst := [3]float64{}
-		for at := 0.5; at < end; at += 0.37109375 {
-			got, want := slope(at, 0.05), exact(at)
+		where := [3]float64{}
+		_, last := w.Span()
+		for at := 0.5; at < min(end, last-1); at += 0.37109375 {
+			got, want := slope(at, step), exact(at)
 			for i := range got {
-				worst[i] = max(worst[i], math.Abs(got[i]-want[i]))
+				if d := math.Abs(got[i] - want[i]); d > worst[i] {
+					worst[i], where[i] = d, at
+				}
 			}
 		}
 		var s State
@@ -350,12 +339,12 @@ func TestDifferencesSeeNoJoints(t *testing.T) {
 		allowed := [3]float64{8e-15 * max(40, math.Abs(s.Rstar)), 1e-13, 3e-14}
 		for i := range worst {
 			if worst[i] > allowed[i] {
-				t.Errorf("%s: differences of unknown %d are off by %.2g (allowed %.2g)", w.Kind(), i, worst[i], allowed[i])
+				t.Errorf("%s: differences of unknown %d are off by %.2g at t = %g (allowed %.2g)", w.Kind(), i, worst[i], where[i], allowed[i])
 			}
 		}
 		if w.Kind() == "eccentric" {
 			at := 31.0
-			e1, e2, want := slope(at, 8), slope(at, 4), exact(at)
+			e1, e2, want := slope(at, 4), slope(at, 2), exact(at)
 			ratio := math.Abs(e1[2]-want[2]) / math.Abs(e2[2]-want[2])
 			if order := math.Log2(ratio); math.Abs(order-8) > 0.8 {
 				t.Errorf("order of the differences is %.2f, want 8", order)
@@ -415,7 +404,7 @@ func TestInspiralAgainstHamilton(t *testing.T) {
 // manifold that a fresh start at that radius has.
 func TestInspiralStartsWithoutEccentricity(t *testing.T) {
 	for _, o := range []struct{ nu, from, limit float64 }{
-		{1e-5, 10, 1e-12}, {1e-4, 10, 1e-11}, {1e-3, 10, 1e-9}, {1e-3, 8, 3e-8},
+		{1e-4, 8, 3e-15}, {1e-3, 10, 3e-15}, {1e-3, 8, 3e-15}, {1e-2, 8, 1e-9},
 	} {
 		c := must[*Inspiral](t)(NewInspiral(InspiralOrbit{MassRatio: o.nu, From: o.from}))
 		var s State

@@ -164,7 +164,7 @@ func (c *command) root() *cobra.Command {
 		return nil
 	}
 
-	root.AddCommand(c.runCommand(), c.planCommand(), c.reportCommand(), c.verifyCommand())
+	root.AddCommand(c.runCommand(), c.planCommand(), c.compareCommand(), c.reportCommand(), c.verifyCommand())
 	return root
 }
 

@@ -155,12 +155,14 @@ func TestUsage(t *testing.T) {
 		code int
 		want string // on stderr, or on stdout when the code is 0
 	}{
-		{nil, ExitUsage, "name a command: plan, report, run, verify"},
+		{nil, ExitUsage, "name a command: compare, plan, report, run, verify"},
 		{[]string{"--version"}, ExitDone, "nullmark "},
 		{[]string{"--help"}, ExitDone, "Exit codes"},
-		{[]string{"rnu", "case.yaml"}, ExitUsage, `there is no command "rnu" (did you mean run? There are plan, report, run, verify)`},
-		{[]string{"simulate"}, ExitUsage, `there is no command "simulate" (there are plan,`},
-		{[]string{"compare", "x"}, ExitUsage, `there is no command "compare"`},
+		{[]string{"rnu", "case.yaml"}, ExitUsage, `there is no command "rnu" (did you mean run? There are compare, plan, report, run, verify)`},
+		{[]string{"simulate"}, ExitUsage, `there is no command "simulate" (there are compare, plan,`},
+		{[]string{"compare", "x"}, ExitUsage, "x is not a usable result directory"},
+		{[]string{"compare", "x", "--model", "m.yaml", "--with", "y"}, ExitUsage, "--model and --with are both given"},
+		{[]string{"compare"}, ExitUsage, "compare wants one result directory, not 0"},
 		{[]string{"run"}, ExitUsage, "run wants one case file, not 0: nullmark run CASE.yaml"},
 		{[]string{"run", "a.yaml", "b.yaml"}, ExitUsage, "run wants one case file, not 2"},
 		{[]string{"run", "--fast", "case.yaml"}, ExitUsage, "nullmark run has no flag --fast (nullmark run --help lists the flags)"},

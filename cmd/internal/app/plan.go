@@ -120,7 +120,7 @@ func planText(caseYAML string, p *wire.Plan, warnings []string, workers int) str
 		}
 	})
 	if len(p.Rungs) > 0 {
-		b.WriteString("\nRUNGS (each mode starts on two neighbouring ones and climbs where its error bar asks for it)\n")
+		b.WriteString("\nRUNGS (each mode runs on neighbouring ones and climbs where its error bar asks for it)\n")
 		table(func(w io.Writer) {
 			fmt.Fprintln(w, "  modes\tpoints\tdx\tdt\tkernel\tmoments\torder\tuntil\tcore s\t")
 			for _, r := range p.Rungs {

@@ -251,7 +251,7 @@ func extractionChecks() []Check {
 }
 
 // farOut is the case of the weak-field limits.
-func farOut(r0 float64) []string { return circular(r0, 5, "1e-6") }
+func farOut(r0 float64) []string { return circular(r0, 6, "1e-6") }
 
 // barChecks: do the bars hold the truth, and are they no wider than they say?
 // Every mode of both radii of the independent table, energy flux at both ends

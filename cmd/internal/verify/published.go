@@ -109,3 +109,13 @@ func seriesCoefficients(v float64) [12]float64 {
 			142155./784*pi*ln3 + 177293./1176*pi*ln,
 	}
 }
+
+// Truncated is Series without its terms beyond v^order (0 to 11).
+func Truncated(v float64, order int) float64 {
+	c := seriesCoefficients(v)
+	sum := 0.0
+	for k := order; k >= 0; k-- {
+		sum = sum*v + c[k]
+	}
+	return sum
+}

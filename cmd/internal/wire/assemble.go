@@ -31,6 +31,18 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
 		Orbit: r.describe(), Warnings: append([]string{}, Warnings(c)...),
 	}
+	index := r.rungList(res)
+	for _, m := range r.modes {
+		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
+	}
+	sumModes(c, res, rate)
+	verdict(c, res)
+	return &result.Bundle{Result: res, Series: r.series(c)}, nil
+}
+
+// rungList writes the rungs that were run into the result, coarsest first, and
+// returns their places in it.
+func (r *climb) rungList(res *result.Result) map[int]int {
 	index := map[int]int{}
 	var ks []int
 	for k := range r.rungs {
@@ -48,12 +60,7 @@ func (r *circularRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		g.Modes = strings.Join(names, " ")
 		res.Rungs = append(res.Rungs, g)
 	}
-	for _, m := range r.modes {
-		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
-	}
-	r.totals(c, res)
-	r.verdict(c, res)
-	return &result.Bundle{Result: res, Series: r.series(c)}, nil
+	return index
 }
 
 func (r *circularRun) describe() *result.Orbit {
@@ -94,15 +101,16 @@ func (r *circularRun) strainAmplitude(m *ladder) complex128 {
 		m.circ.z[certify.Infinity] * cmplx.Exp(complex(0, -m.circ.tone.Omega*r.n.domain.So))
 }
 
-func (r *circularRun) totals(c *configs.Case, res *result.Result) {
+// sumModes adds up the modes, by m and in all, with the estimated tail in l.
+func sumModes(c *configs.Case, res *result.Result, measure string) {
 	var inf, hor []*result.Flux
 	for i := range res.Modes {
 		inf = append(inf, res.Modes[i].Infinity)
 		hor = append(hor, res.Modes[i].Horizon)
 	}
-	total := &result.Total{Measure: rate, Infinity: flux.Sum(inf...), Horizon: flux.Sum(hor...)}
+	total := &result.Total{Measure: measure, Infinity: flux.Sum(inf...), Horizon: flux.Sum(hor...)}
 	res.Total = total
-	for m := 1; m <= c.Waves.LMax; m++ {
+	for m := 0; m <= c.Waves.LMax; m++ {
 		var a, b []*result.Flux
 		for i := range res.Modes {
 			if res.Modes[i].M == m {
@@ -126,31 +134,44 @@ func (r *circularRun) totals(c *configs.Case, res *result.Result) {
 		}
 		return out[2:]
 	}
-	ei, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Infinity.Energy.Value }), 0)
-	eh, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return m.Horizon.Energy.Value }), 0.02)
+	tail := func(end func(*result.Mode) *result.Flux, margin float64) (*result.Flux, bool) {
+		e, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).Energy.Value }), margin)
+		l, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value }), margin)
+		return &result.Flux{Energy: e, AngularMomentum: l}, ok1 && ok2
+	}
+	if total.Horizon == nil {
+		// Nothing is absorbed that could be told apart from the particle itself.
+		inf, ok := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
+		if !ok {
+			t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
+			return
+		}
+		t.Infinity = inf
+		total.Infinity = flux.Sum(total.Infinity, inf)
+		return
+	}
+	inf1, ok1 := tail(func(m *result.Mode) *result.Flux { return m.Infinity }, 0)
+	hor1, ok2 := tail(func(m *result.Mode) *result.Flux { return m.Horizon }, 0.02)
 	if !ok1 || !ok2 {
 		t.Note = "l_max is too small, or the modes fall too slowly, to estimate the tail in l: the total lacks it"
 		res.Warnings = append(res.Warnings, t.Note)
 		return
 	}
-	// On a circular orbit dE = Omega dL mode by mode, so also in the tail.
-	t.Infinity = tailFlux(ei, r.orbit.omega)
-	t.Horizon = tailFlux(eh, r.orbit.omega)
+	t.Infinity, t.Horizon = inf1, hor1
 	total.Infinity = flux.Sum(total.Infinity, t.Infinity)
 	total.Horizon = flux.Sum(total.Horizon, t.Horizon)
 }
 
-func tailFlux(e result.Q, omega float64) *result.Flux {
-	return &result.Flux{Energy: e, AngularMomentum: result.Q{Value: e.Value / omega, Error: e.Error / omega}}
-}
-
 // verdict compares every bar with what was asked.
-func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
+func verdict(c *configs.Case, res *result.Result) {
 	a := result.Accuracy{Asked: c.Accuracy.Relative, Floor: c.Accuracy.Floor, Met: true}
 	var largest [2]float64
 	ends := func(m *result.Mode) [2]*result.Flux { return [2]*result.Flux{m.Infinity, m.Horizon} }
 	for i := range res.Modes {
 		for e, f := range ends(&res.Modes[i]) {
+			if f == nil {
+				continue
+			}
 			largest[e] = math.Max(largest[e], f.Energy.Value)
 		}
 	}
@@ -161,6 +182,9 @@ func (r *circularRun) verdict(c *configs.Case, res *result.Result) {
 			res.Warnings = append(res.Warnings, fmt.Sprintf("mode (%d,%d) did not reach %.1e: %s", m.L, m.M, c.Accuracy.Relative, m.Why))
 		}
 		for e, f := range ends(m) {
+			if f == nil {
+				continue
+			}
 			scale := f.Energy.Value
 			if scale < c.Accuracy.Floor*largest[e] {
 				// Below the floor the bar is held to floor times the largest,

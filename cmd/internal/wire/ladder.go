@@ -62,6 +62,7 @@ type climb struct {
 	modes   []*ladder
 	rungs   map[int]*result.Rung
 	members map[int]map[string]bool
+	rounds  int // rounds gone so far, over all calls of run
 }
 
 func newClimb(n numerics, o Options) *climb {
@@ -75,6 +76,7 @@ func (r *climb) run(ctx context.Context) error {
 		if len(pending) == 0 {
 			return nil
 		}
+		r.rounds++
 		if err := r.round(ctx, round, pending); err != nil {
 			return err
 		}
@@ -120,7 +122,7 @@ func (r *climb) pending() []*ladder {
 // round runs the wanted rung of every pending mode, with the coarser ones that
 // its bar needs, and certifies.
 func (r *climb) round(ctx context.Context, round int, pending []*ladder) error {
-	r.meter.stage(fmt.Sprintf("round %d, %d modes", round+1, len(pending)))
+	r.meter.stage(fmt.Sprintf("round %d, %d modes", r.rounds, len(pending)))
 	var blocks [][]*ladder
 	for i := 0; i < len(pending); {
 		j := i
@@ -142,7 +144,7 @@ func (r *climb) round(ctx context.Context, round int, pending []*ladder) error {
 	return each(ctx, r.o.Workers, len(blocks), func(ctx context.Context, i int) error {
 		b := blocks[i]
 		k := b[0].rung
-		name := fmt.Sprintf("round-%d-block-%d", round, i)
+		name := fmt.Sprintf("round-%d-block-%d", r.rounds, i)
 		until := 0.0
 		for _, m := range b {
 			if round == 0 {

@@ -42,8 +42,13 @@ func choose(c *configs.Case) numerics {
 		inner: 20, outer: 30, profile: hyperboloidal.Flat(2),
 		ramp: source.Ramp{Centre: 80, Width: 17}, rungs: 3, maxRung: 8, fixedRung: -1,
 	}
-	if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
-		n.outer = math.Max(n.outer, 1.6*c.Orbit.Radius)
+	if c.Orbit != nil {
+		switch c.Orbit.Kind {
+		case configs.Circular:
+			n.outer = math.Max(n.outer, 1.6*c.Orbit.Radius)
+		case configs.Eccentric:
+			n.outer = math.Max(n.outer, 1.6*c.Orbit.P/(1+c.Orbit.E))
+		}
 	}
 	m := c.Numerics
 	if m.Order != nil {
@@ -93,14 +98,18 @@ func defaultCells(moments int) float64 {
 
 // place fixes the domain for a particle at rest in r_* (a circular orbit): one
 // domain for all rungs, so that their amplitudes compare without a shift.
-func (n *numerics) place(rstar float64) {
+func (n *numerics) place(rstar float64) { n.placeBetween(rstar, rstar) }
+
+// placeBetween fixes the domain for a particle that moves between two tortoise
+// coordinates.
+func (n *numerics) placeBetween(inner, outer float64) {
 	n.coarsestDx = certify.CoarsestSpacing
 	n.widest = n.cells * n.coarsestDx
 	w := source.NewKernel(n.widest, n.moments).Reach() + n.gap
 	// An inner layer that began far out would squeeze a large radius into its
 	// thickness, and the stretched coordinate would be stiff.
-	ri := math.Min(rstar-w, 0)
-	n.domain = hyperboloidal.Layers{Si: ri - n.inner, Ri: ri, Ro: rstar + w, So: rstar + w + n.outer, Profile: n.profile}
+	ri := math.Min(inner-w, 0)
+	n.domain = hyperboloidal.Layers{Si: ri - n.inner, Ri: ri, Ro: outer + w, So: outer + w + n.outer, Profile: n.profile}
 	if n.points > 0 {
 		// The asked points are those of the finest rung, which is rung
 		// rungs-1 of a ladder whose coarsest spacing follows.

@@ -5,11 +5,14 @@ package wire
 
 import (
 	"context"
+	"errors"
 	"fmt"
+	"slices"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
 	"nullmark/hyperboloidal"
+	"nullmark/source/worldline"
 )
 
 // Progress is how far a run has come, in work units: Done <= Total. Total may
@@ -55,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
@@ -69,6 +72,25 @@ func checkCircular(c *configs.Case) []configs.Problem {
 		return []configs.Problem{{Key: "orbit.radius", Value: r, Want: "above 3: no timelike circular orbit exists at or inside the light ring r = 3"}}
 	case r > 1000:
 		return []configs.Problem{{Key: "orbit.radius", Value: r, Want: "at most 1000: the periods of wider orbits are out of reach of a time-domain run"}}
+	}
+	return nil
+}
+
+// checkEccentric passes on what the worldline refuses.
+func checkEccentric(c *configs.Case) []configs.Problem {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
+		return nil
+	}
+	_, err := newEccentric(c.Orbit)
+	return refusal(err)
+}
+
+// refusal turns what a worldline says of impossible parameters into a problem of
+// the case file.
+func refusal(err error) []configs.Problem {
+	var no *worldline.Impossible
+	if errors.As(err, &no) {
+		return []configs.Problem{{Key: "orbit." + no.Key, Value: no.Value, Want: no.Want}}
 	}
 	return nil
 }
@@ -100,6 +122,10 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 	switch {
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
+		return runBound(ctx, c, choose(c), o)
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return runBurst(ctx, c, choose(c), o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }

@@ -1,0 +1,428 @@
+package wire
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"math/cmplx"
+	"strings"
+
+	"nullmark/configs"
+	"nullmark/equations"
+	"nullmark/equations/semi"
+	"nullmark/extract/certify"
+	"nullmark/extract/flux"
+	"nullmark/extract/result"
+	"nullmark/extract/strain"
+	"nullmark/grid"
+	"nullmark/source"
+	"nullmark/source/worldline"
+)
+
+const total = "total"
+
+// deepEnd is the r_* at which the source of a falling particle is let go: its
+// strength falls like e^{r_*/2} and is below 1e-14 there.
+const deepEnd = -65.0
+
+// burstRun is an orbit that comes and goes, or plunges: transients.
+type burstRun struct {
+	*climb
+	path    worldline.Worldline
+	asked   float64
+	falls   bool    // reaches the horizon
+	ends    float64 // slice time at which the evolution ends
+	event   float64 // when the orbit does what it is run for
+	after   float64 // retarded time from which numbers count
+	starts  map[*ladder]junkSeries
+	largest float64 // radiated energy of the strongest mode, per both signs
+}
+
+// burstPath makes the worldline of a transient case.
+func burstPath(c *configs.Case) (worldline.Worldline, error) {
+	o := c.Orbit
+	switch o.Kind {
+	case configs.Infall:
+		return worldline.NewInfall(o.From, o.Energy, o.AngularMomentum, 0)
+	case configs.Scatter:
+		return worldline.NewScatter(o.Energy, o.AngularMomentum, o.From, 0, 0)
+	case configs.Inspiral:
+		drive, err := driveOf(o.Drive)
+		if err != nil {
+			return nil, err
+		}
+		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive})
+	}
+	return nil, fmt.Errorf("orbit.kind %s is not a transient", o.Kind)
+}
+
+// horizonTime is when a falling particle passes r_* = HorizonApproach, or +Inf.
+func horizonTime(w worldline.Worldline) float64 {
+	for _, m := range w.Markers() {
+		if m.Name == worldline.MarkHorizon {
+			return m.T
+		}
+	}
+	return math.Inf(1)
+}
+
+// burstRamp fits the switch-on into the time before the event (the fall into the
+// horizon, the periastron): the softer it is, the less it excites, and the
+// residue of the start-up is what limits a transient.
+func burstRamp(event float64) source.Ramp {
+	c := math.Min(0.35*event, 400)
+	return source.Ramp{Centre: c, Width: c / 4.7}
+}
+
+// eventTime is when a transient orbit does what it is run for.
+func eventTime(w worldline.Worldline) float64 {
+	for _, m := range w.Markers() {
+		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron {
+			return m.T
+		}
+	}
+	return horizonTime(w) - 30
+}
+
+func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
+	w, err := burstPath(c)
+	if err != nil {
+		return nil, err
+	}
+	r := &burstRun{climb: newClimb(n, o), path: w, asked: c.Accuracy.Relative}
+	r.kind = r
+	th := horizonTime(w)
+	r.falls = !math.IsInf(th, 1)
+	inner, outer := r.reach(th)
+	r.event = eventTime(w)
+	r.n.ramp = burstRamp(r.event)
+	r.n.filter, r.n.filterStrength = 16, 0.5
+	r.n.courant = math.Min(r.n.courant, 1.1)
+	r.n.outer = math.Max(r.n.outer, 30)
+	if r.falls {
+		inner = deepEnd
+	}
+	r.n.placeBetween(inner, outer)
+	if r.falls {
+		// Below the deep end the kernel needs no flat room: the source is gone.
+		r.n.domain.Ri = deepEnd - 2
+		r.n.domain.Si = r.n.domain.Ri - r.n.inner
+	}
+	switch {
+	case r.n.until > 0:
+		r.ends = r.n.until + r.n.domain.So
+	case r.falls:
+		// r_* = -30 is passed about 33 M after the light ring; the ringdown is
+		// followed for 150 M.
+		r.ends = th + 120 + r.n.domain.So
+	default:
+		_, t1 := w.Span()
+		r.ends = t1 + r.n.domain.So
+	}
+	for _, lm := range c.ModeList() {
+		m := newLadder(lm[0], lm[1])
+		m.mov = &movingMode{}
+		m.allow = [2]float64{r.asked, r.asked}
+		m.rung = r.startRung()
+		r.modes = append(r.modes, m)
+	}
+	return r, nil
+}
+
+// reach is the range of r_* that the particle covers while the source acts.
+func (r *burstRun) reach(th float64) (inner, outer float64) {
+	var s worldline.State
+	t0, t1 := r.path.Span()
+	t0 = math.Max(t0, -40)
+	if r.falls {
+		t1 = th
+	}
+	inner, outer = math.Inf(1), math.Inf(-1)
+	const parts = 400
+	for i := 0; i <= parts; i++ {
+		r.path.At(t0+(t1-t0)*float64(i)/parts, &s)
+		inner, outer = math.Min(inner, s.Rstar), math.Max(outer, s.Rstar)
+	}
+	return inner, outer
+}
+
+// startRung is the measured spacing for an asked accuracy of the strain against
+// its peak.
+func (r *burstRun) startRung() int {
+	if r.n.fixedRung >= 0 {
+		return r.n.fixedRung
+	}
+	k := int(math.Round(2.5 - 0.45*(math.Log10(r.asked)+4)))
+	return min(max(k, r.n.rungs-1), r.n.maxRung)
+}
+
+func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*result.Bundle, error) {
+	clock := startClock()
+	r, err := newBurstRun(c, n, o)
+	if err != nil {
+		return nil, err
+	}
+	for _, m := range r.modes {
+		m.until = r.ends
+	}
+	if r.starts, err = r.junk(ctx); err != nil {
+		return nil, err
+	}
+	for _, m := range r.modes {
+		m.until = 0
+	}
+	// The start-up is over when the ramp is, or later when its residue is still
+	// falling and there is time before the event to wait for it.
+	r.after = math.Min(r.n.ramp.Centre+3*r.n.ramp.Width, r.event-40)
+	r.after = math.Max(r.after, r.event-120)
+	all := r.modes
+	r.modes = leading(all)
+	if err := r.run(ctx); err != nil {
+		return nil, err
+	}
+	for _, m := range r.modes {
+		r.largest = math.Max(r.largest, m.mov.flux[0].energy)
+	}
+	r.modes = all
+	if err := r.run(ctx); err != nil {
+		return nil, err
+	}
+	b, err := r.assemble(c)
+	if err != nil {
+		return nil, err
+	}
+	b.Result.Provenance = clock.stop(o.Workers)
+	return b, nil
+}
+
+func (r *burstRun) worldline() worldline.Worldline { return r.path }
+
+// force implements kind.
+func (r *burstRun) force(modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {
+	return movingForce(r.path, r.n.ramp, modes)
+}
+
+func (r *burstRun) firstUntil(*ladder) float64 { return r.ends }
+func (r *burstRun) lastUntil(*ladder) float64  { return r.ends }
+func (r *burstRun) stride(*ladder) float64     { return 1 }
+
+// quiet implements kind: the end is fixed by the orbit.
+func (r *burstRun) quiet(*certify.Samples, *ladder, float64, int) bool { return true }
+
+// certify implements kind: the strain against its peak, and the radiated totals.
+func (r *burstRun) certify(m *ladder) (climb bool, err error) {
+	m.met, m.why = true, ""
+	d := r.n.domain
+	left := certify.Leftover(min(r.n.order, r.n.moments))
+	round := certify.RoundOff(m.points[m.rung], 1)
+	// The strain.
+	step := math.Max(0.5, m.runs[m.rung].Dt)
+	us := ladderOfTimes(step, r.after, d.Retarded(r.ends)-1)
+	w, bars, diff := r.sampled(m, certify.Infinity, d.Retarded(0), us, step)
+	peak, worst, worstDisc := 0.0, 0.0, 0.0
+	for i := range w {
+		peak = math.Max(peak, cmplx.Abs(w[i]))
+		worst = math.Max(worst, bars[i])
+		worstDisc = math.Max(worstDisc, left*diff[i])
+	}
+	if b := worst / peak; !(b <= r.asked) {
+		m.met = false
+		what := "discretisation"
+		if worstDisc < worst/2 {
+			what = "start-up"
+		}
+		m.why = fmt.Sprintf("the %s holds the bar of the strain at %.1e of its peak", what, b)
+		climb = what == "discretisation" && worstDisc/peak > round
+	}
+	// The totals.
+	c := flux.Norm(m.l) / (64 * math.Pi)
+	if m.m != 0 {
+		c *= 2
+	}
+	ends := 2
+	if r.falls {
+		ends = 1 // on the horizon the particle's own field passes
+	}
+	for e := 0; e < ends; e++ {
+		var x [3]certify.Radiated
+		from, until := r.after+d.So, r.ends-1
+		if certify.End(e) == certify.Horizon {
+			from = r.after + d.So - d.Ro // the signal reaches the horizon sooner
+		}
+		count := 0
+		for k := m.rung; k > m.rung-min(r.n.rungs, 3); k-- {
+			x[count] = certify.Integrate(m.runs[k], certify.End(e), from, until, 0.25)
+			count++
+		}
+		f := &m.mov.flux[e]
+		f.energy, f.spin = c*x[0].Power, c*float64(m.m)*x[0].Spin
+		disc := func(a, b, g float64) float64 {
+			v := math.Abs(a - b)
+			if count > 2 {
+				v = math.Max(v, certify.Guard*math.Abs(b-g))
+			}
+			return left * v
+		}
+		// What the start-up adds: twice the field times its residue, integrated;
+		// the residue of Psi_tau is at most that of Psi per M.
+		res := r.starts[m].at(e, from)
+		span := until - from
+		size := math.Sqrt(x[0].Power / span)
+		start := (2*size + res) * res * span * 0.1
+		dr, dphi := r.path.Uncertainty()
+		path := 2*dr + 2*float64(m.m)*dphi
+		f.energyBar = certify.Budget{
+			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/x[0].Power + path,
+			Transient:      start / x[0].Power, RoundOff: 2 * round,
+		}
+		f.spinBar = certify.Budget{
+			Discretisation: disc(x[0].Spin, x[1].Spin, x[2].Spin)/math.Max(math.Abs(x[0].Spin), 1e-300) + path,
+			Transient:      start / math.Max(x[0].Power, 1e-300), RoundOff: 2 * round,
+		}
+		if m.m == 0 {
+			f.spinBar = certify.Budget{}
+		}
+	}
+	if b := m.mov.flux[0].energyBar; !(b.Bar() <= r.asked) && m.mov.flux[0].energy > 1e-6*r.largest {
+		m.met = false
+		m.why = strings.TrimPrefix(m.why+fmt.Sprintf("; the %s holds the bar of the radiated energy at %.1e", b.Largest(), b.Bar()), "; ")
+		climb = climb || b.Discretisation > 0.3*r.asked
+	}
+	return climb, nil
+}
+
+// sampled resamples the field of a mode at one end with a bar per sample: what
+// the two finest rungs leave open, what the start-up has left, round-off, and
+// the worldline's own error. At infinity the field is the strain.
+func (r *climb) sampledWith(m *ladder, e certify.End, start float64, at []float64, step float64, junk junkSeries, dphi float64) (w []complex128, bar, diff []float64) {
+	fine, mid := m.runs[m.rung], m.runs[m.rung-1]
+	fac := complex(1, 0)
+	if e == certify.Infinity {
+		fac = strain.Factor(m.l, m.parity == equations.Odd)
+	}
+	w = strain.Resample(fine.Psi[e], start, fine.Dt, at)
+	o := strain.Resample(mid.Psi[e], start, mid.Dt, at)
+	peak := 0.0
+	diff = make([]float64, len(w))
+	for i := range w {
+		w[i] *= fac
+		diff[i] = cmplx.Abs(w[i] - fac*o[i])
+		peak = math.Max(peak, cmplx.Abs(w[i]))
+	}
+	left := certify.Leftover(min(r.n.order, r.n.moments))
+	round := certify.RoundOff(m.points[m.rung], 1)
+	near := runningMax(diff, int(math.Ceil(12/step)))
+	bar = make([]float64, len(w))
+	for i := range w {
+		bar[i] = left*near[i] + cmplx.Abs(fac)*junk.at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
+	}
+	return w, bar, diff
+}
+
+func (r *burstRun) sampled(m *ladder, e certify.End, start float64, at []float64, step float64) (w []complex128, bar, diff []float64) {
+	_, dphi := r.path.Uncertainty()
+	return r.sampledWith(m, e, start, at, step, r.starts[m], dphi)
+}
+
+// assemble turns the finished ladders into a result.
+func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
+	tree, err := c.Tree()
+	if err != nil {
+		return nil, err
+	}
+	res := &result.Result{
+		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
+		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
+	}
+	delete(res.Conventions, "circular strain")
+	delete(res.Conventions, "orbital frequency")
+	d := r.n.domain
+	res.Conventions["totals"] = fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", r.after, d.Retarded(r.ends)-1)
+	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its energy counts once"
+	if r.falls {
+		res.Conventions["horizon"] = "the particle crosses the horizon: its own field passes there, and no absorbed total is given"
+	}
+	index := r.rungList(res)
+	for _, m := range r.modes {
+		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
+	}
+	sumModes(c, res, total)
+	verdict(c, res)
+	_, dphi := r.path.Uncertainty()
+	s := r.seriesOf(c, r.path, r.starts, dphi)
+	if s != nil {
+		s.JunkUntil = r.after
+	}
+	return &result.Bundle{Result: res, Series: s}, nil
+}
+
+func (r *burstRun) entry(m *ladder, rung int) result.Mode {
+	f := &m.mov.flux
+	at := func(a averaged) *result.Flux {
+		return &result.Flux{
+			Energy:          result.Q{Value: a.energy, Error: a.energy * a.energyBar.Bar()},
+			AngularMomentum: result.Q{Value: a.spin, Error: math.Abs(a.spin) * a.spinBar.Bar()},
+		}
+	}
+	counts := bothSigns
+	if m.m == 0 {
+		counts = "m = 0 alone"
+	}
+	out := result.Mode{
+		L: m.l, M: m.m, Parity: m.parity.String(), Measure: total, Counts: counts, Infinity: at(f[certify.Infinity]),
+		Met: m.met, Why: m.why, Rung: rung,
+		Budget: map[string]float64{
+			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "round-off": f[0].energyBar.RoundOff,
+		},
+	}
+	if !r.falls {
+		out.Horizon = at(f[certify.Horizon])
+	}
+	return out
+}
+
+// seriesOf samples strain and horizon field of all modes.
+func (r *climb) seriesOf(c *configs.Case, path worldline.Worldline, junk map[*ladder]junkSeries, dphi float64) *result.Series {
+	if len(r.modes) == 0 {
+		return nil
+	}
+	until := math.Inf(1)
+	for _, m := range r.modes {
+		until = math.Min(until, m.until)
+	}
+	d := r.n.domain
+	s := &result.Series{Prefix: "h", HorizonPrefix: "psi"}
+	s.U = ladderOfTimes(c.Output.Every, 0, d.Retarded(until))
+	s.V = ladderOfTimes(c.Output.Every, math.Ceil(d.Advanced(0)), d.Advanced(until))
+	t0, t1 := path.Span()
+	var st worldline.State
+	for _, t := range s.U {
+		if t >= t0 && t <= t1 {
+			path.At(t, &st)
+			if st.Rstar < worldline.HorizonApproach {
+				break
+			}
+			s.T, s.R, s.Phi = append(s.T, t), append(s.R, st.R), append(s.Phi, st.Phi)
+		}
+	}
+	for _, m := range r.modes {
+		out := result.ModeSeries{L: m.l, M: m.m}
+		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), s.U, c.Output.Every, junk[m], dphi)
+		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), s.V, c.Output.Every, junk[m], dphi)
+		s.Modes = append(s.Modes, out)
+	}
+	return s
+}
+
+// checkBurst passes on what the worldline refuses.
+func checkBurst(c *configs.Case) []configs.Problem {
+	if c.Orbit == nil || c.Hole.Spin != 0 {
+		return nil
+	}
+	switch c.Orbit.Kind {
+	case configs.Infall, configs.Scatter, configs.Inspiral:
+		_, err := burstPath(c)
+		return refusal(err)
+	}
+	return nil
+}
