@@ -129,3 +129,69 @@ func TestKerrOrbitsRefused(t *testing.T) {
 		t.Error("unbound orbit accepted")
 	}
 }
+
+// A fall obeys the first integral all the way through the horizon, where the
+// general and the factorised potential agree, and its rates match differences.
+func TestKerrFall(t *testing.T) {
+	for _, a := range []float64{0, 0.9, -0.5} {
+		h := kerrHole(t, a)
+		k, _, err := CircularKerr(h, h.ISCO())
+		if err != nil {
+			t.Fatal(err)
+		}
+		s := hyperboloidal.KerrLayers{Hole: h, Si: -23, Ri: -3, Ro: 20, So: 45, Steepness: 3}
+		s.Slope = hyperboloidal.KerrPlungeSlope(h, s.Si, 0.05)
+		for _, c := range []struct{ e, l, from float64 }{{k.E, k.L, 0.98 * h.ISCO()}, {1, 0, 9}, {1.1, 2, 9}} {
+			f := NewKerrFall(s, c.e, c.l)
+			begin, err := f.Begin(c.from, 0.3, true)
+			if err != nil {
+				t.Fatal(err)
+			}
+			const step = 0.05
+			path := f.Sample(begin, step, 20000, s.Si-2)
+			if last := path[len(path)-1]; last.R >= h.OuterHorizon() {
+				t.Errorf("a=%g %+v: ends at r = %g, outside the horizon", a, c, last.R)
+			}
+			for i := 4; i < len(path)-4; i += 37 {
+				p := path[i]
+				pp := p.E*(p.R*p.R+a*a) - a*p.L
+				want := pp*pp - (p.R*p.R-2*p.R+a*a)*(p.R*p.R+p.Carter(a))
+				if d := math.Abs(p.Wr*p.Wr - want); d > 5e-12*pp*pp { // 2e-12 measured, of the step
+					t.Fatalf("a=%g %+v r=%g: first integral off by %.1e", a, c, p.R, d/(pp*pp))
+				}
+				dphi := (8*(path[i+1].Phi-path[i-1].Phi) - (path[i+2].Phi - path[i-2].Phi)) / (12 * step)
+				b := s.Along(p.Rho).B
+				if want := p.SigmaPhi(a) / p.SigmaTau(a, b); math.Abs(dphi-want) > 1e-6 {
+					t.Fatalf("a=%g %+v r=%g: dphi/dtau %g, want %g", a, c, p.R, dphi, want)
+				}
+			}
+		}
+		if _, err := NewKerrFall(s, 0.9, 0).Begin(50, 0, true); err == nil {
+			t.Errorf("a=%g: a bound particle was started where it cannot be", a)
+		}
+	}
+}
+
+// E and L from the coordinate velocity of a geodesic are its own.
+func TestKerrFromVelocity(t *testing.T) {
+	h := kerrHole(t, 0.9)
+	o, err := NewKerrBound(h, 7, 0.3, 1, 1.1, 0, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, az := o.At(20)
+	b := (s.R*s.R + 0.81) / (s.R*s.R - 2*s.R + 0.81)
+	st := s.SigmaTau(0.9, b)
+	// dphi/dt = dphi~/dt - (a/Delta) dr/dt
+	rd := s.Wr / st
+	k, err := KerrFromVelocity(h, s.R, az, rd, s.SigmaPhi(0.9)/st-0.9/(s.R*s.R-2*s.R+0.81)*rd)
+	if err != nil {
+		t.Fatal(err)
+	}
+	kerrNear(t, "E", k.E, o.E, 1e-13)
+	kerrNear(t, "L", k.L, o.L, 1e-13)
+	kerrNear(t, "W", k.Wr, s.Wr, 1e-13)
+	if _, err := KerrFromVelocity(h, 4, 0, 0, 0.5); err == nil {
+		t.Error("a speed above that of light was accepted")
+	}
+}
