@@ -28,6 +28,7 @@ const (
 	outerThickness = 25.0
 	innermost      = 4.0 // the inner layer begins at or below this r*
 	flatRoom       = 5.0
+	plungeSlope    = 0.05
 	flatWidths     = 8.0 // of the kernel
 )
 
@@ -109,10 +110,7 @@ func BoundTrack(o *worldline.KerrBound, dt, until float64) source.KerrTrack {
 // horizon: flat from r* = -3 to beyond the start, so that no layer lies above
 // the orbit before it nears the horizon.
 func Fall(h hyperboloidal.Kerr, from, widest float64) Domain {
-	const (
-		inner, thick = -3.0, 20.0
-		slope        = 0.05
-	)
+	const inner, thick = -3.0, 20.0
 	w := math.Max(flatRoom, flatWidths*defaultCells*widest)
 	hi := h.Tortoise(from - h.OuterHorizon())
 	d := Domain{
@@ -121,7 +119,23 @@ func Fall(h hyperboloidal.Kerr, from, widest float64) Domain {
 		},
 		Ramp: source.Ramp{Centre: 90, Width: 17},
 	}
-	d.Layers.Slope = hyperboloidal.KerrPlungeSlope(h, d.Layers.Si, slope)
+	d.Layers.Slope = hyperboloidal.KerrPlungeSlope(h, d.Layers.Si, plungeSlope)
+	return d
+}
+
+// Absorbing is the domain for the same orbit with s = +2, run for what the
+// horizon absorbs: a shallower inner layer (13 thick from r* = 3), because that
+// field grows from round-off at a deep inner end, and a thin outer one, because
+// nothing is read there.
+func (d Domain) Absorbing() Domain {
+	const ri, inner, outer = 3.0, 13.0, 15.0
+	d.Layers.Ri = math.Min(ri, d.Layers.Ro)
+	d.Layers.Si = d.Layers.Ri - inner
+	d.Layers.So = d.Layers.Ro + outer
+	d.Layers.Steepness = steepness
+	if d.Layers.Slope > 0 {
+		d.Layers.Slope = hyperboloidal.KerrPlungeSlope(d.Layers.Hole, d.Layers.Si, plungeSlope)
+	}
 	return d
 }
 

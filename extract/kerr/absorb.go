@@ -25,7 +25,8 @@ type Absorption struct {
 //	dE/dv = (2 r+/4 pi) sum_l [ |dF/dv|^2 + m Omega_H Im(conj(dF/dv) F) ],
 //	dL/dv = (2 r+/4 pi) sum_l m Im(conj(dF/dv) F),   dF/dv = sigma,
 //
-// in the frame that turns with the horizon. The fields must have died away at
+// in the frame that turns with the horizon. The series must begin when the
+// start-up has died away and the tide is still slow. The fields must have died away at
 // the last sample; what is left there bounds the error.
 func Burst(h hyperboloidal.Kerr, m int, phi [][]complex128, v0, dt float64) Absorption {
 	n := len(phi[0])
@@ -42,6 +43,14 @@ func Burst(h hyperboloidal.Kerr, m int, phi [][]complex128, v0, dt float64) Abso
 		}
 		shear(sigma, psi, kap, dt)
 		f := integral(sigma, dt)
+		// What F was when the series begins: there sigma is a slow tide seen from
+		// the turning horizon, an oscillation whose integral is sigma^2/sigma'.
+		if rate := complex(kap, 0)*sigma[0] + psi[0]; rate != 0 {
+			f0 := sigma[0] * sigma[0] / rate
+			for k := range f {
+				f[k] += f0
+			}
+		}
 		for k, s := range sigma {
 			g := float64(m) * imag(cmplx.Conj(s)*f[k])
 			out.Energy[k] += 2 * rp / (4 * math.Pi) * (real(s)*real(s) + imag(s)*imag(s) + om*g)
@@ -125,4 +134,55 @@ func trapezoid(f []float64, dt float64) float64 {
 		}
 	}
 	return s * dt
+}
+
+// Spectral returns the total absorbed by one m (this sign alone) from the s = -2
+// fields at the horizon of a burst, phi[l][k] at advanced time v0 + k dt with
+// l = max(2,|m|) + l index: the energy per frequency of Spheroidal.Horizon,
+// integrated over both signs of frequency up to most. The series is multiplied by
+// a smooth window that rises and falls over its first and last quarter; it serves
+// orbits that come from and return to where nothing is absorbed. It returns an
+// error when a spheroidal problem fails.
+func Spectral(h hyperboloidal.Kerr, m int, phi [][]complex128, v0, dt, most float64) (Rate, error) {
+	n := len(phi[0])
+	length := float64(n-1) * dt
+	step := math.Pi / length // half the spacing of independent frequencies
+	count := int(most / step)
+	window := make([]float64, n)
+	for k := range window {
+		window[k] = rise(4*float64(k)/float64(n-1)) * rise(4*float64(n-1-k)/float64(n-1))
+	}
+	z := make([]complex128, len(phi))
+	var sum Rate
+	for j := -count; j <= count; j++ {
+		w := (float64(j) + 0.5) * step
+		turn := cmplx.Exp(complex(0, w*dt))
+		for l := range phi {
+			// Horner in e^{i w dt}, backwards
+			var s complex128
+			for k := n - 1; k >= 0; k-- {
+				s = s*turn + complex(window[k], 0)*phi[l][k]
+			}
+			z[l] = s * complex(dt, 0) * cmplx.Exp(complex(0, w*v0))
+		}
+		sp, err := NewSpheroidal(h, m, len(phi), w)
+		if err != nil {
+			return Rate{}, err
+		}
+		r := Sum(sp.Horizon(z))
+		sum.Energy += r.Energy * step / (2 * math.Pi)
+		sum.AngularMomentum += r.AngularMomentum * step / (2 * math.Pi)
+	}
+	return sum, nil
+}
+
+// rise goes smoothly from 0 at x <= 0 to 1 at x >= 1.
+func rise(x float64) float64 {
+	if x <= 0 {
+		return 0
+	}
+	if x >= 1 {
+		return 1
+	}
+	return 1 / (1 + math.Exp(1/x-1/(1-x)))
 }
