@@ -353,3 +353,51 @@ func CircularSources(h hyperboloidal.Kerr, o *worldline.KerrBound, s, m, n, kmax
 	}
 	return omega, src
 }
+
+// Opinion is the answer at one frequency of a circular orbit, with how much more
+// nodes change it: Change bounds the relative error of the largest amplitude at
+// each end (infinity, horizon).
+type Opinion struct {
+	Omega float64
+	LMin  int
+	Amplitudes
+	Change [2]float64
+}
+
+// Circular solves all tones of a circular orbit at one m with n values of l and
+// polar harmonics up to kmax (ignored when the orbit is equatorial), twice, with
+// 30 and 38 nodes a domain. Tones of zero frequency are left out.
+func Circular(h hyperboloidal.Kerr, o *worldline.KerrBound, s, m, n, kmax int) ([]Opinion, error) {
+	const few, many = 30, 38
+	omega, src := CircularSources(h, o, s, m, n, kmax)
+	var out []Opinion
+	for k, w := range omega {
+		if math.Abs(w) < 1e-9*math.Abs(o.OmegaPhi) {
+			continue
+		}
+		p, err := New(h, s, m, n, w)
+		if err != nil {
+			return nil, err
+		}
+		a, err := p.Solve(src[k], few)
+		if err != nil {
+			return nil, err
+		}
+		b, err := p.Solve(src[k], many)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, Opinion{Omega: w, LMin: p.LMin, Amplitudes: b,
+			Change: [2]float64{change(a.Infinity, b.Infinity), change(a.Horizon, b.Horizon)}})
+	}
+	return out, nil
+}
+
+func change(a, b []complex128) float64 {
+	d, size := 0.0, 0.0
+	for i := range a {
+		d = math.Max(d, cmplx.Abs(a[i]-b[i]))
+		size = math.Max(size, cmplx.Abs(b[i]))
+	}
+	return d / size
+}
