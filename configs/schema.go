@@ -150,7 +150,7 @@ var schema = []key{
 	{path: "numerics.kernel_moments", form: whole, bounds: between(2, 16), even: true, doc: "Vanishing moments of the smoothed delta."},
 	{path: "numerics.layer", form: real, bounds: limits{low: 0, high: 10_000, lowOpen: true}, doc: "Thickness of the outer layer, M."},
 	{path: "numerics.angular", form: whole, bounds: between(1, 2*maxL), equation: Teukolsky, doc: "Number of coupled l."},
-	{path: "numerics.rungs", form: whole, bounds: between(2, 5), doc: "Most resolutions to climb."},
+	{path: "numerics.rungs", form: whole, bounds: between(2, 5), doc: "How many resolutions an error bar is made from."},
 
 	{path: "span.until", form: real, bounds: above(0), doc: "Last retarded time u, M; else chosen from the orbit."},
 

@@ -57,20 +57,28 @@ func (k Flat) String() string { return fmt.Sprintf("1-exp(%g(1-1/x))", float64(k
 //	x = (Ri-rho)/(Ri-Si),  tau + rho = t + r_*,
 //
 // the mirror image: Si is the horizon, and advanced time v = tau + rho there.
-// Alpha = 0 serves orbits that stay outside the inner layer.
+// Alpha = 0 serves orbits that stay outside the inner layer; a larger one, up to
+// the slope dr_t/drho = 1-2/r_t at Si, keeps dr/drho from vanishing just beyond
+// the horizon. Up to that slope r_t - 2 stays above Alpha (rho-Si), so that r
+// grows throughout the layer.
 type Layers struct {
 	Si, Ri, Ro, So float64
 	Profile        Profile
 	Alpha          float64
 }
 
-// Check returns an error when the four places are not in order.
+// Check returns an error when the four places are not in order, there is no
+// profile, or Alpha is outside its range.
 func (g Layers) Check() error {
 	if !(g.Si < g.Ri && g.Ri < g.Ro && g.Ro < g.So) {
 		return fmt.Errorf("hyperboloidal: layers want Si < Ri < Ro < So, got %g, %g, %g, %g", g.Si, g.Ri, g.Ro, g.So)
 	}
 	if g.Profile == nil {
 		return fmt.Errorf("hyperboloidal: layers want a profile")
+	}
+	y := InverseTortoise(g.Si)
+	if most := y / (2 + y); !(g.Alpha >= 0 && g.Alpha <= most) {
+		return fmt.Errorf("hyperboloidal: layers want Alpha from 0 to %g (1-2/r at r_* = %g), got %g", most, g.Si, g.Alpha)
 	}
 	return nil
 }
@@ -93,7 +101,7 @@ type Point struct {
 	Height, HeightPrime float64
 	// Stretch is (dr/drho)/r^2, finite at both ends: V/L = (V r^2/f) Stretch.
 	Stretch float64
-	// H0 is h itself: t = tau + h; at the two ends +Inf or -Inf.
+	// H0 is h itself: t = tau + h; +Inf at the two ends.
 	H0 float64
 }
 

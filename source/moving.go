@@ -49,6 +49,7 @@ type Moving struct {
 
 	step   float64 // spacing of the nodes
 	ring   [nodes]nodeSample
+	spare  nodeSample
 	diff   [nodes][nodes]float64 // diff[j][k]: weight of node k in the j-th derivative, unit spacing
 	deriv  [nodes][]float64      // per derivative, width*grid.Lanes
 	width  int                   // points of a kernel's support, upper bound
@@ -92,6 +93,7 @@ func NewMoving(path Path, k Kernel, ramp Ramp, modes []MasterSource, where Range
 	for i := range s.ring {
 		s.ring[i].values = make([]float64, single*grid.Lanes)
 	}
+	s.spare.values = make([]float64, single*grid.Lanes)
 	for j := range s.deriv {
 		s.deriv[j] = make([]float64, s.width*grid.Lanes)
 		at := make([]int64, nodes)
@@ -108,8 +110,12 @@ func NewMoving(path Path, k Kernel, ramp Ramp, modes []MasterSource, where Range
 // sample evaluates the source at node index i.
 func (s *Moving) sample(n *nodeSample, i int64) {
 	n.index, n.valid = i, true
+	s.evaluate(n, float64(i)*s.step)
+}
+
+// evaluate fills n with the source at time t.
+func (s *Moving) evaluate(n *nodeSample, t float64) {
 	n.lo, n.hi = 0, 0
-	t := float64(i) * s.step
 	if t < s.t0 || t > s.t1 {
 		return
 	}
@@ -213,11 +219,8 @@ func (s *Moving) AddDerivative(dst []float64, j int, scale float64) {
 
 // Add adds the forcing at time t itself.
 func (s *Moving) Add(dst []float64, t float64) {
-	n := nodeSample{values: make([]float64, len(s.ring[0].values))}
-	saved := s.step
-	s.step = t
-	s.sample(&n, 1)
-	s.step = saved
+	n := &s.spare
+	s.evaluate(n, t)
 	for p := n.lo; p < n.hi; p++ {
 		for l := range grid.Lanes {
 			dst[p*grid.Lanes+l] += n.values[(p-n.lo)*grid.Lanes+l]

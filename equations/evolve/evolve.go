@@ -72,7 +72,7 @@ func (r *Run) Advance(ctx context.Context, n int) error {
 	if every <= 0 {
 		every = 64
 	}
-	if r.Steps == 0 {
+	if r.Steps == 0 && n > 0 {
 		for _, o := range r.Observers {
 			o.Observe(0, r.Start, r.State)
 		}

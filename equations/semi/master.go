@@ -211,8 +211,18 @@ func (m *Master) Length() int { return 2 * m.geo.Grid.N * grid.Lanes }
 func (m *Master) Geometry() *Geometry { return m.geo }
 
 // SpectralRadius bounds the frequencies of the system: dt times it must stay
-// below the stepper's imaginary limit. It is the largest symbol of the second
-// difference (speed 1 everywhere).
+// below the stepper's imaginary limit. It is the root of the largest symbol of
+// the second difference (speed 1 everywhere) plus the largest K V/L of its lanes.
+func (m *Master) SpectralRadius() float64 {
+	v := 0.0
+	for i, d := range m.diag {
+		v = max(v, m.geo.centre[i/grid.Lanes]-d)
+	}
+	return math.Hypot(m.geo.SpectralRadius(), math.Sqrt(v))
+}
+
+// SpectralRadius is that of the wave operator alone: the root of the largest
+// symbol of the second difference. Potentials add to it (Master.SpectralRadius).
 func (g *Geometry) SpectralRadius() float64 {
 	s := g.d2[0]
 	sign := -1.0

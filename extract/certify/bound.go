@@ -18,7 +18,7 @@ type Average struct {
 
 // MeanOver averages with the window sin^{2 power} over power+1 radial periods
 // ending at until: exact to round-off for signals whose squares repeat with the
-// radial period.
+// radial period (to 5e-11 for power 1, whose ends the samples do not resolve).
 func MeanOver(s *Samples, end End, until, period float64, power int) (Average, error) {
 	w := demod.Window{Start: until - float64(power+1)*period, Length: float64(power+1) * period, Power: power}
 	if w.Start < 0 || until > s.Until()+1e-9*until {
@@ -42,7 +42,8 @@ func MeanOver(s *Samples, end End, until, period float64, power int) (Average, e
 
 // Distance is the root mean square difference of two rungs' Psi_tau over the
 // same window, relative to the finer's: unlike the difference of the averages it
-// does not vanish by accident.
+// does not vanish by accident. It is +Inf where the coarser rung ends before the
+// window starts.
 func Distance(fine, coarse *Samples, end End, until, period float64, power int) float64 {
 	w := demod.Window{Start: until - float64(power+1)*period, Length: float64(power+1) * period, Power: power}
 	k0 := int(math.Ceil(w.Start / fine.Dt))
@@ -55,6 +56,9 @@ func Distance(fine, coarse *Samples, end End, until, period float64, power int) 
 			break
 		}
 		at = append(at, t)
+	}
+	if len(at) == 0 {
+		return math.Inf(1)
 	}
 	other := strain.Resample(coarse.Pi[end], 0, coarse.Dt, at)
 	var d, p float64

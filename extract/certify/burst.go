@@ -1,6 +1,7 @@
 package certify
 
 import (
+	"math"
 	"math/cmplx"
 
 	"nullmark/extract/strain"
@@ -13,13 +14,15 @@ type Radiated struct {
 	Spin  float64 // integral of Im(Psi conj(Psi_tau))
 }
 
-// Integrate sums the signals at one end from slice time from to until, resampled
-// every step, by the trapezoidal rule with Gregory's end corrections of order 6.
+// Integrate integrates the signals at one end from slice time from to until,
+// resampled every step (less or more by what makes a whole number of steps), by
+// the trapezoidal rule with Gregory's end corrections up to fifth differences.
 func Integrate(s *Samples, end End, from, until, step float64) Radiated {
-	n := int((until-from)/step) + 1
+	n := int(math.Round((until-from)/step)) + 1
 	if n < 16 {
 		panic("certify: too few steps to integrate")
 	}
+	step = (until - from) / float64(n-1)
 	at := make([]float64, n)
 	for i := range at {
 		at[i] = from + float64(i)*step

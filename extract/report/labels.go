@@ -30,6 +30,8 @@ func label(key string) string {
 		return "radius of the light ring"
 	case KeyHorizon:
 		return "radius of the horizon"
+	case "rstar":
+		return "tortoise coordinate r_*"
 	case "isco":
 		return "innermost stable circular orbit"
 	}
@@ -56,7 +58,7 @@ func unitOf(key string) string {
 		return "degrees"
 	case has("phase", "azimuth"):
 		return "rad"
-	case has("radius", "period", "time", "r_min", "r_max"), key == "p", key == "u":
+	case has("radius", "period", "time", "r_min", "r_max", "rstar"), key == "p", key == "u":
 		return "M"
 	case key == "Q", has("carter"):
 		return "μ² M²"

@@ -209,10 +209,11 @@ func budgetPicture(r *result.Result) (picture, bool) {
 		c.b.WriteString(`<text x="` + px(right-4) + `" y="` + px(at-5) + `" class="label strong halo" text-anchor="end">asked: ` + escape(askedNumber(asked)) + `</text>`)
 	}
 	size := math.Max(2.2, math.Min(4, l.slot*0.22))
+	x := left + 6
 	for k, name := range names {
-		x := left + 6 + float64(k%5)*138
 		c.marker(k, x, 15, 4, fmt.Sprintf("s%d", k%markers))
 		c.text(x+11, 19, "label", "start", name)
+		x += 40 + 6.6*float64(len(name))
 		for i, m := range l.modes {
 			v, found := m.Budget[name]
 			if !found || !(v > 0) || !finite(v) {
@@ -221,8 +222,11 @@ func budgetPicture(r *result.Result) (picture, bool) {
 			c.marker(k, l.at[i], y.at(v), size, fmt.Sprintf("s%d", k%markers))
 		}
 	}
-	return picture{ID: "picture-budget", Title: title, SVG: c.String(),
-		Caption: "Each mode’s relative error bar of the strain, split into its named parts. Parts of size zero are not drawn."}, true
+	caption := "Each mode’s relative error bar of the strain, split into its named parts. Parts of size zero are not drawn."
+	if f := r.Accuracy.Floor; f > 0 {
+		caption += " Modes below " + askedNumber(f) + " of the largest are held to that size instead of the line."
+	}
+	return picture{ID: "picture-budget", Title: title, SVG: c.String(), Caption: caption}, true
 }
 
 // budgetNames lists the parts that occur, the usual ones first.

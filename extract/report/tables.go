@@ -331,20 +331,20 @@ func rungTable(r *result.Result) []table {
 	for _, g := range r.Rungs {
 		angular = angular || g.Angular > 0
 	}
-	t := table{ID: "rungs", Caption: "The ladder of resolutions that was run", Heads: []head{{Text: "rung"}, {Text: "modes"}, {Text: "points", Unit: "", Num: true}, {Text: "spacing", Unit: "M", Num: true}, {Text: "time step", Unit: "M", Num: true},
+	t := table{ID: "rungs", Caption: "The ladder of resolutions that was run", Heads: []head{{Text: "rung"}, {Text: "points", Unit: "", Num: true}, {Text: "spacing", Unit: "M", Num: true}, {Text: "time step", Unit: "M", Num: true},
 		{Text: "kernel width", Unit: "M", Num: true}, {Text: "vanishing moments", Unit: "", Num: true}, {Text: "order", Unit: "", Num: true}}}
 	if angular {
 		t.Heads = append(t.Heads, head{Text: "coupled l", Unit: "", Num: true})
 	}
-	t.Heads = append(t.Heads, head{Text: "until", Unit: "M", Num: true}, head{Text: "cost", Unit: "core s", Num: true})
+	t.Heads = append(t.Heads, head{Text: "until", Unit: "M", Num: true}, head{Text: "cost", Unit: "core s", Num: true}, head{Text: "modes"})
 	for i, g := range r.Rungs {
 		num := func(s string) cell { return cell{s, "num"} }
-		cells := []cell{{clean(g.Modes), ""}, num(strconv.Itoa(g.Points)), num(settingNumber(g.Dx)), num(settingNumber(g.Dt)),
+		cells := []cell{num(strconv.Itoa(g.Points)), num(settingNumber(g.Dx)), num(settingNumber(g.Dt)),
 			num(settingNumber(g.Kernel)), num(strconv.Itoa(g.Moments)), num(strconv.Itoa(g.Order))}
 		if angular {
 			cells = append(cells, num(strconv.Itoa(g.Angular)))
 		}
-		cells = append(cells, num(settingNumber(g.Until)), num(strconv.FormatFloat(g.CoreSeconds, 'f', 2, 64)))
+		cells = append(cells, num(settingNumber(g.Until)), num(strconv.FormatFloat(g.CoreSeconds, 'f', 2, 64)), cell{clean(g.Modes), "list"})
 		t.Rows = append(t.Rows, row{Heads: []string{strconv.Itoa(i)}, Cells: cells})
 	}
 	return []table{t}

@@ -137,9 +137,9 @@ func metSentence(r *result.Result) string {
 	}
 	switch {
 	case a.Met && worst != "":
-		return fmt.Sprintf("Every number reached the asked relative accuracy %s; %s.", asked, worst)
+		return fmt.Sprintf("Every mode reached the asked relative accuracy %s; %s.", asked, worst)
 	case a.Met:
-		return fmt.Sprintf("Every number reached the asked relative accuracy %s.", asked)
+		return fmt.Sprintf("Every mode reached the asked relative accuracy %s.", asked)
 	}
 	s := fmt.Sprintf("The asked relative accuracy %s was not reached", asked)
 	if n := unmet(r); n > 0 {

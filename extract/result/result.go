@@ -69,7 +69,7 @@ type PerM struct {
 	M          int   `json:"m"`
 	Infinity   *Flux `json:"infinity,omitempty"`
 	Horizon    *Flux `json:"horizon,omitempty"`
-	LConverged bool  `json:"l_converged"`
+	LConverged bool  `json:"l_converged"` // the last two l add at most the asked relative accuracy
 }
 
 // Total is the sum over all modes. The fluxes include the estimated tail

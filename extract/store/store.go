@@ -44,7 +44,7 @@ const (
 func own(name string) bool {
 	switch name {
 	case caseFile, resultFile, waveformFile, horizonFile, fluxFile, reportFile, sumsFile, partialDir,
-		"comparison.json", "comparison.html":
+		"comparison.json", "comparison.html", "comparison.csv":
 		return true
 	}
 	return strings.HasPrefix(name, addMark)

@@ -348,7 +348,7 @@ func TestAcceptableStates(t *testing.T) {
 			return errors.Join(Write(dir, sample(2), []byte(caseA), all(), false), NewKeeper(dir, []byte(caseA)).Save("block", []byte("data")))
 		},
 		"result with a comparison": func(dir string) error {
-			return errors.Join(Write(dir, sample(2), []byte(caseA), all(), false), Add(dir, map[string][]byte{"comparison.json": []byte("{}")}))
+			return errors.Join(Write(dir, sample(2), []byte(caseA), all(), false), Add(dir, map[string][]byte{"comparison.json": []byte("{}"), "comparison.html": []byte("page"), "comparison.csv": []byte("u\n")}))
 		},
 	} {
 		dir := filepath.Join(t.TempDir(), "r")

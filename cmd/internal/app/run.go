@@ -53,9 +53,11 @@ func (c *command) run(cmd *cobra.Command, path string) error {
 	if err := store.Ready(dir, caseYAML, c.force); err != nil {
 		return outFault(err)
 	}
-	if err := writable(dir); err != nil {
+	made, err := writable(dir)
+	if err != nil {
 		return coded(ExitFiles, fmt.Errorf("cannot write results to %s: %w (choose another place with --out)", dir, err))
 	}
+	defer removeEmpty(made)
 	c.warn(c.engine.Warnings(kase))
 
 	kept := &keeper{inner: store.NewKeeper(dir, identity(caseYAML)), resume: c.resume}
@@ -161,18 +163,40 @@ func defaultOut(path string) string {
 	return filepath.Join("results", strings.TrimSuffix(base, filepath.Ext(base)))
 }
 
-// writable makes sure that a result directory can appear at dir, by making a
-// file where it will be made.
-func writable(dir string) error {
+// writable makes sure that a result directory can appear at dir, by making its
+// missing parents, which it returns from the innermost outwards, and a
+// directory where it will be made.
+func writable(dir string) (made []string, err error) {
 	parent := filepath.Dir(filepath.Clean(dir))
+	for p := parent; ; p = filepath.Dir(p) {
+		if _, err := os.Stat(p); !errors.Is(err, os.ErrNotExist) || p == filepath.Dir(p) {
+			break
+		}
+		made = append(made, p)
+	}
+	defer func() {
+		if err != nil {
+			removeEmpty(made)
+		}
+	}()
 	if err := os.MkdirAll(parent, 0o777); err != nil {
-		return err
+		return made, err
 	}
 	probe, err := os.MkdirTemp(parent, ".nullmark-probe-*")
 	if err != nil {
-		return err
+		return made, err
 	}
-	return os.Remove(probe)
+	return made, os.Remove(probe)
+}
+
+// removeEmpty takes those of the directories away in which nothing has come to
+// lie; the others refuse.
+func removeEmpty(dirs []string) {
+	for _, d := range dirs {
+		if os.Remove(d) != nil {
+			return
+		}
+	}
 }
 
 // outFault gives an error of the store its exit code: refusing to replace

@@ -118,7 +118,8 @@ func sumModes(c *configs.Case, res *result.Result, measure string) {
 			}
 		}
 		if len(a) > 0 {
-			res.PerM = append(res.PerM, result.PerM{M: m, Infinity: flux.Sum(a...), Horizon: flux.Sum(b...)})
+			res.PerM = append(res.PerM, result.PerM{M: m, Infinity: flux.Sum(a...), Horizon: flux.Sum(b...),
+				LConverged: len(c.Waves.Modes) == 0 && settled(a, c.Accuracy.Relative) && settled(b, c.Accuracy.Relative)})
 		}
 	}
 	if len(c.Waves.Modes) > 0 {
@@ -160,6 +161,22 @@ func sumModes(c *configs.Case, res *result.Result, measure string) {
 	t.Infinity, t.Horizon = inf1, hor1
 	total.Infinity = flux.Sum(total.Infinity, t.Infinity)
 	total.Horizon = flux.Sum(total.Horizon, t.Horizon)
+}
+
+// settled says whether a sum over ascending l has come to its end: its last two
+// parts together are at most the asked fraction of it. Modes fall by more than a
+// factor of two from each second l to the next wherever this is small.
+func settled(byL []*result.Flux, asked float64) bool {
+	sum := flux.Sum(byL...)
+	if sum == nil {
+		return true // nothing is summed at this end
+	}
+	n := len(byL)
+	if n < 2 || byL[n-1] == nil || byL[n-2] == nil {
+		return false
+	}
+	last := math.Abs(byL[n-1].Energy.Value) + math.Abs(byL[n-2].Energy.Value)
+	return last <= asked*math.Abs(sum.Energy.Value)
 }
 
 // verdict compares every bar with what was asked.

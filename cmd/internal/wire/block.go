@@ -85,8 +85,8 @@ func (n *numerics) evolveBlock(ctx context.Context, modes []blockMode, force fun
 			c := min(steps, 256)
 			if err := run.Advance(ctx, c); err != nil {
 				var fail *evolve.Failure
-				if errors.As(err, &fail) && n.courant*geo.SpectralRadius()*g.Dx > stepper.ImaginaryLimit() {
-					return nil, fmt.Errorf("numerics.courant %g is beyond the stability limit %.3g of this scheme: %w", n.courant, stepper.ImaginaryLimit()/(geo.SpectralRadius()*g.Dx), err)
+				if errors.As(err, &fail) && n.courant*sys.SpectralRadius()*g.Dx > stepper.ImaginaryLimit() {
+					return nil, fmt.Errorf("numerics.courant %g is beyond the stability limit %.3g of this scheme: %w", n.courant, stepper.ImaginaryLimit()/(sys.SpectralRadius()*g.Dx), err)
 				}
 				return nil, err
 			}

@@ -116,11 +116,20 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 		// followed for 150 M.
 		r.ends = th + 120 + r.n.domain.So
 	default:
+		// The source stops at the end of the path: what that sends out arrives
+		// later than anything that is used.
 		_, t1 := w.Span()
-		r.ends = t1 + r.n.domain.So
+		var s worldline.State
+		w.At(t1, &s)
+		r.ends = t1 - s.Rstar - source.NewKernel(r.n.widest, r.n.moments).Reach() + r.n.domain.So
 	}
+	var start worldline.State
+	w.At(0, &start)
 	for _, lm := range c.ModeList() {
 		m := newLadder(lm[0], lm[1])
+		if start.L == 0 && m.parity == equations.Odd {
+			continue // a radial fall excites even modes only
+		}
 		m.mov = &movingMode{}
 		m.allow = [2]float64{r.asked, r.asked}
 		m.rung = r.startRung()
@@ -171,10 +180,7 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	for _, m := range r.modes {
 		m.until = 0
 	}
-	// The start-up is over when the ramp is, or later when its residue is still
-	// falling and there is time before the event to wait for it.
-	r.after = math.Min(r.n.ramp.Centre+3*r.n.ramp.Width, r.event-40)
-	r.after = math.Max(r.after, r.event-120)
+	r.after = r.quietAt()
 	all := r.modes
 	r.modes = leading(all)
 	if err := r.run(ctx); err != nil {
@@ -197,6 +203,31 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 
 func (r *burstRun) worldline() worldline.Worldline { return r.path }
 
+// quietAt is the retarded time from which numbers count: the particle has come
+// to full strength there, the strongest modes' residue of the start-up has
+// stopped mattering for the energy, or there is no more time to wait before the event.
+func (r *burstRun) quietAt() float64 {
+	var s worldline.State
+	on := r.n.ramp.Centre + 2.5*r.n.ramp.Width
+	r.path.At(on, &s)
+	first := on - s.Rstar + 20
+	r.path.At(r.event, &s)
+	last := r.event - math.Max(s.Rstar, 0) - 60
+	if last <= first {
+		return first
+	}
+	// Wait until what the residue adds to the radiated energy is a third of what
+	// is asked for, if there is time.
+	after := first
+	for _, m := range leading(r.modes) {
+		j := r.starts[m]
+		for after < last && j.energy(0, after+r.n.domain.So, j.sent[0]) > r.asked/3*j.sent[0] {
+			after += 2
+		}
+	}
+	return math.Min(after, last)
+}
+
 // force implements kind.
 func (r *burstRun) force(modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {
 	return movingForce(r.path, r.n.ramp, modes)
@@ -209,6 +240,19 @@ func (r *burstRun) stride(*ladder) float64     { return 1 }
 // quiet implements kind: the end is fixed by the orbit.
 func (r *burstRun) quiet(*certify.Samples, *ladder, float64, int) bool { return true }
 
+// strainFrom is the retarded time from which the strain must reach what was
+// asked: a driven inspiral counts from the end of its start-up, the other
+// transients from shortly before their event (the residue of the start-up has a
+// bar at every sample in any case).
+func (r *burstRun) strainFrom() float64 {
+	if r.path.Kind() == configs.Inspiral {
+		return r.after
+	}
+	var s worldline.State
+	r.path.At(r.event, &s)
+	return math.Max(r.after, r.event-math.Max(s.Rstar, 0)-60)
+}
+
 // certify implements kind: the strain against its peak, and the radiated totals.
 func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 	m.met, m.why = true, ""
@@ -217,7 +261,7 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 	round := certify.RoundOff(m.points[m.rung], 1)
 	// The strain.
 	step := math.Max(0.5, m.runs[m.rung].Dt)
-	us := ladderOfTimes(step, r.after, d.Retarded(r.ends)-1)
+	us := ladderOfTimes(step, r.strainFrom(), d.Retarded(r.ends)-1)
 	w, bars, diff := r.sampled(m, certify.Infinity, d.Retarded(0), us, step)
 	peak, worst, worstDisc := 0.0, 0.0, 0.0
 	for i := range w {
@@ -263,12 +307,7 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 			}
 			return left * v
 		}
-		// What the start-up adds: twice the field times its residue, integrated;
-		// the residue of Psi_tau is at most that of Psi per M.
-		res := r.starts[m].at(e, from)
-		span := until - from
-		size := math.Sqrt(x[0].Power / span)
-		start := (2*size + res) * res * span * 0.1
+		start := r.starts[m].energy(e, from, x[0].Power)
 		dr, dphi := r.path.Uncertainty()
 		path := 2*dr + 2*float64(m.m)*dphi
 		f.energyBar = certify.Budget{
@@ -347,6 +386,8 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		res.Modes = append(res.Modes, r.entry(m, index[m.rung]))
 	}
 	sumModes(c, res, total)
+	r.peaks(res)
+	r.kick(res)
 	verdict(c, res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)

@@ -58,6 +58,7 @@ type circularRun struct {
 func newCircularRun(c *configs.Case, n numerics, o Options) *circularRun {
 	orbit := newCircularOrbit(c.Orbit.Radius)
 	n.place(orbit.rstar)
+	n.stopAt()
 	r := &circularRun{climb: newClimb(n, o), orbit: orbit, asked: c.Accuracy.Relative, floor: c.Accuracy.Floor}
 	r.kind = r
 	for _, lm := range c.ModeList() {
@@ -224,7 +225,7 @@ func (r *circularRun) certify(m *ladder) (climb bool, err error) {
 		for k := m.rung; k > m.rung-r.n.rungs; k-- {
 			rd, err := certify.Read(m.runs[k], end, m.circ.tone, m.until, m.circ.power)
 			if err != nil {
-				return false, fmt.Errorf("span.until %g is too short for mode (%d,%d): %w", m.until, m.l, m.m, err)
+				return false, fmt.Errorf("span.until %g is too short for mode (%d,%d): %w", r.n.domain.Retarded(m.until), m.l, m.m, err)
 			}
 			if k == m.rung {
 				fine = rd

@@ -69,6 +69,7 @@ func newBoundRun(c *configs.Case, n numerics, o Options) (*boundRun, error) {
 	r.advance = r.numbers["omega_phi"] * r.period
 	r.power = min(certify.WindowPower(r.asked), 3)
 	r.n.placeBetween(hyperboloidal.TortoiseAt(r.numbers["r_min"]), hyperboloidal.TortoiseAt(r.numbers["r_max"]))
+	r.n.stopAt()
 	for _, lm := range c.ModeList() {
 		m := newLadder(lm[0], lm[1])
 		m.mov = &movingMode{}
@@ -340,12 +341,25 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 				d := make([]float64, len(a))
 				for k := range a {
 					d[k] = cmplx.Abs(a[k] - b[k])
+					if float64(k)*s.dt > r.n.on()+r.n.domain.So {
+						s.peak[e] = math.Max(s.peak[e], cmplx.Abs(a[k]))
+					}
 				}
 				// What has died away does not come back: the envelope falls.
 				for k := len(d) - 2; k >= 0; k-- {
 					d[k] = math.Max(d[k], d[k+1])
 				}
 				s.psi[e] = d
+				pa, pb := runs[0].Samples[q].Pi[e], runs[1].Samples[q].Pi[e]
+				rest := make([]float64, len(pa)+1)
+				for k := len(pa) - 1; k >= 0; k-- {
+					x := cmplx.Abs(pa[k] - pb[k])
+					rest[k] = rest[k+1] + s.dt*x*x
+					if float64(k)*s.dt > r.n.on()+r.n.domain.So {
+						s.sent[e] += s.dt * real(pa[k]*cmplx.Conj(pa[k]))
+					}
+				}
+				s.rest[e] = rest
 			}
 			out[blocks[i][0]+q] = s
 		}
@@ -363,14 +377,24 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 
 // junkSeries is the falling envelope of what a later switch-on changes in Psi.
 type junkSeries struct {
-	dt  float64
-	psi [2][]float64
+	dt   float64
+	psi  [2][]float64
+	rest [2][]float64 // integral of |difference of Psi_tau|^2 from each step on
+	peak [2]float64   // of |Psi| after the switch-on, on the coarsest rung
+	sent [2]float64   // integral of |Psi_tau|^2 after the switch-on
 }
 
 // at is the envelope at slice tau.
 func (j junkSeries) at(e int, tau float64) float64 {
 	k := max(0, min(int(tau/j.dt)-1, len(j.psi[e])-1))
 	return j.psi[e][k]
+}
+
+// energy bounds what the residue from slice tau on adds to the integral of
+// |Psi_tau|^2, given that integral (Cauchy–Schwarz).
+func (j junkSeries) energy(e int, tau, power float64) float64 {
+	k := max(0, min(int(tau/j.dt)-1, len(j.rest[e])-1))
+	return 2*math.Sqrt(power*j.rest[e][k]) + j.rest[e][k]
 }
 
 // forceWith makes a forcing with another ramp.

@@ -120,6 +120,14 @@ func (n *numerics) placeBetween(inner, outer float64) {
 	}
 }
 
+// stopAt turns span.until, a retarded time, into the slice that has it at null
+// infinity; the domain must have been placed.
+func (n *numerics) stopAt() {
+	if n.until > 0 {
+		n.until += n.domain.So
+	}
+}
+
 // grid returns the grid of rung k.
 func (n *numerics) grid(k int) grid.Grid {
 	length := n.domain.So - n.domain.Si

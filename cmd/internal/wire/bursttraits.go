@@ -1,0 +1,111 @@
+package wire
+
+import (
+	"math"
+
+	"nullmark/equations"
+	"nullmark/extract/certify"
+	"nullmark/extract/peak"
+	"nullmark/extract/recoil"
+	"nullmark/extract/result"
+	"nullmark/extract/signal"
+	"nullmark/extract/strain"
+	"nullmark/source/worldline"
+)
+
+// traitStep is the sampling of the series from which peaks and recoil are read.
+const traitStep = 0.25
+
+// times are the retarded times from which a transient's traits are read.
+func (r *burstRun) times() []float64 {
+	return ladderOfTimes(traitStep, r.after, r.n.domain.Retarded(r.ends)-1)
+}
+
+// seriesOn is the strain (or its time derivative) of a mode on one rung.
+func (r *burstRun) seriesOn(m *ladder, rung int, at []float64, rate bool) signal.Series {
+	s := m.runs[rung]
+	field := s.Psi[certify.Infinity]
+	if rate {
+		field = s.Pi[certify.Infinity]
+	}
+	v := strain.Resample(field, r.n.domain.Retarded(0), s.Dt, at)
+	fac := strain.Factor(m.l, m.parity == equations.Odd)
+	for i := range v {
+		v[i] *= fac
+	}
+	return signal.Series{Start: at[0], Dt: traitStep, Values: v}
+}
+
+// peaks fills the maximum of |r h_lm| of every mode with m > 0, its delay against
+// the peak orbital frequency, and the values at the light-ring crossing.
+func (r *burstRun) peaks(res *result.Result) {
+	if !r.falls {
+		return
+	}
+	at := r.times()
+	left := certify.Leftover(min(r.n.order, r.n.moments))
+	markers := map[string]float64{}
+	for _, k := range r.path.Markers() {
+		markers[k.Name] = k.T
+	}
+	for _, m := range r.modes {
+		entry := res.Find(m.l, m.m)
+		if m.m == 0 || entry == nil {
+			continue
+		}
+		fine, mid := r.seriesOn(m, m.rung, at, false), r.seriesOn(m, m.rung-1, at, false)
+		fine.Err = make([]float64, len(at))
+		for i, u := range at {
+			fine.Err[i] = r.starts[m].at(int(certify.Infinity), u+r.n.domain.So) * abs(strain.Factor(m.l, false))
+		}
+		o := peak.Options{From: r.event - 60, To: at[len(at)-1] - 5, Coarse: &mid, Factor: left}
+		p, err := peak.Find(fine, o)
+		if err != nil {
+			continue // a mode without a clear maximum has none to report
+		}
+		_, dphi := r.path.Uncertainty()
+		if t, ok := markers[worldline.MarkPeakOmega]; ok {
+			p.Delay = peak.Delay(p.U, result.Q{Value: t, Error: dphi})
+		}
+		if t, ok := markers[worldline.MarkLightRing]; ok {
+			if q, err := peak.At(fine, t, o); err == nil {
+				p.AtLightRing = q
+			}
+		}
+		entry.Peak = p
+	}
+}
+
+func abs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }
+
+// kick is the recoil from all neighbouring pairs of modes that were run.
+func (r *burstRun) kick(res *result.Result) {
+	at := r.times()
+	rates := func(back int) []recoil.Mode {
+		var out []recoil.Mode
+		for _, m := range r.modes {
+			s := r.seriesOn(m, m.rung-back, at, true)
+			out = append(out, recoil.Mode{L: m.l, M: m.m, Rate: s})
+		}
+		return out
+	}
+	lMax := 0
+	for _, m := range r.modes {
+		lMax = max(lMax, m.l)
+	}
+	fine, err := recoil.Of(rates(0), lMax)
+	if err != nil {
+		return
+	}
+	mid, err := recoil.Of(rates(1), lMax)
+	if err != nil {
+		return
+	}
+	k, err := recoil.Kick(fine, recoil.Options{
+		From: at[0], To: at[len(at)-1], Turning: r.path.Kind() == "inspiral",
+		Coarse: mid, Factor: certify.Leftover(min(r.n.order, r.n.moments)),
+	})
+	if err == nil {
+		res.Total.Recoil = k
+	}
+}
