@@ -147,8 +147,9 @@ func TestGenericSlicings(t *testing.T) {
 	d2.Layers.Si -= 4
 	d2.Layers.So += 6
 	d2.Layers.Steepness = 2.5
-	r1, b1 := certifiedBound(t, o, d1, 2, 6, 4, 4, 0.45, 500, 8)
-	r2, b2 := certifiedBound(t, o, d2, 2, 6, 4, 4, 0.45, 700, 8)
+	t.Logf("%g radial periods make the window that tells all tones apart", 5*o.OmegaR/kerr.NewTones(2, o.OmegaPhi, o.OmegaR, o.OmegaTheta, 5, 5).Closest())
+	r1, b1 := certifiedBound(t, o, d1, 2, 5, 5, 5, 0.45, 500, 14)
+	r2, b2 := certifiedBound(t, o, d2, 2, 5, 5, 5, 0.45, 700, 14)
 	for l := range 3 {
 		x, y := r1.Infinity[l].Energy, r2.Infinity[l].Energy
 		bar := b1.Infinity[l].Energy + b2.Infinity[l].Energy

@@ -366,9 +366,9 @@ type Opinion struct {
 
 // Circular solves all tones of a circular orbit at one m with n values of l and
 // polar harmonics up to kmax (ignored when the orbit is equatorial), twice, with
-// 30 and 38 nodes a domain. Tones of zero frequency are left out.
+// 36 and 46 nodes a domain. Tones of zero frequency are left out.
 func Circular(h hyperboloidal.Kerr, o *worldline.KerrBound, s, m, n, kmax int) ([]Opinion, error) {
-	const few, many = 30, 38
+	const few, many = 36, 46
 	omega, src := CircularSources(h, o, s, m, n, kmax)
 	var out []Opinion
 	for k, w := range omega {

@@ -201,3 +201,81 @@ func TestNodesConverge(t *testing.T) {
 		}
 	}
 }
+
+// At zero spin the strain is that of the Regge–Wheeler–Zerilli formalism, phase
+// and odd-parity sign included (computed for this project in the frequency
+// domain, 9 digits).
+func TestZeroSpinStrain(t *testing.T) {
+	h, err := hyperboloidal.NewKerr(0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, c := range []struct {
+		r    float64
+		l, m int
+		want complex128
+	}{
+		{10, 2, 2, -0.560320396 + 0.152880419i}, {10, 2, 1, 0.013594004 + 0.068336424i},
+		{10, 3, 3, -0.059153776 - 0.120190845i}, {10, 3, 2, -0.016204208 + 0.006225749i},
+		{10, 4, 4, 0.031365476 - 0.022686644i}, {6, 2, 2, -0.946440351 + 0.318494176i},
+		{6, 2, 1, 0.050385431 + 0.157572581i}, {6, 4, 4, 0.071835264 - 0.083685687i},
+	} {
+		o, err := worldline.NewKerrBound(h, c.r, 0, 1, 0, 0, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		all, err := Circular(h, o, -2, c.m, c.l-max(2, c.m)+1, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		got := kerr.Strain(all[0].Omega, all[0].Infinity[c.l-all[0].LMin])
+		if cmplx.Abs(got-c.want) > 1.5e-9 {
+			t.Errorf("r=%g (%d,%d): %.10f, want %.10f", c.r, c.l, c.m, got, c.want)
+		}
+	}
+}
+
+// Tilting an orbit of a hole without spin changes nothing but the share of each
+// m: the sum over m at every l is that of the equatorial orbit, at both ends.
+func TestTiltedAtZeroSpin(t *testing.T) {
+	h, err := hyperboloidal.NewKerr(0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	sum := func(c float64) (inf, hor [2]float64) {
+		o, err := worldline.NewKerrBound(h, 8, 0, c, 0, 0.3, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for m := range 4 {
+			n := 4 - max(2, m)
+			all, err := Circular(h, o, -2, m, n, 6) // |m + k| <= l
+			if err != nil {
+				t.Fatal(err)
+			}
+			both := 2.0
+			if m == 0 {
+				both = 1
+			}
+			for _, z := range all {
+				sp, err := kerr.NewSpheroidal(h, m, n, z.Omega)
+				if err != nil {
+					t.Fatal(err)
+				}
+				for i := range n {
+					l := z.LMin + i
+					inf[l-2] += both * kerr.Infinity(m, z.Omega, z.Infinity[i]).Energy
+					hor[l-2] += both * sp.Horizon(z.Horizon)[i].Energy
+				}
+			}
+		}
+		return
+	}
+	i0, h0 := sum(1)
+	i1, h1 := sum(math.Cos(0.9))
+	for l := range i0 {
+		if a, b := off(i1[l], i0[l]), off(h1[l], h0[l]); !(a < 1e-10) || !(b < 1e-10) {
+			t.Errorf("l=%d: the tilt changes the flux by %.1e at infinity, %.1e at the horizon", l+2, a, b)
+		}
+	}
+}

@@ -9,8 +9,9 @@ import (
 )
 
 // Tones are the frequencies m Omega_phi + n Omega_r + k Omega_theta of a bound
-// orbit at one m, n = -NR..NR and k = -NTheta..NTheta, the zero frequency left
-// out. Edge marks those of the outermost n or k.
+// orbit at one m with |n|/(NR+1) + |k|/(NTheta+1) < 1 (amplitudes fall with both,
+// and a smaller set is easier to tell apart), the zero frequency left out. Edge
+// marks the outermost ones.
 type Tones struct {
 	M     int
 	Omega []float64
@@ -22,17 +23,33 @@ type Tones struct {
 func NewTones(m int, omegaPhi, omegaR, omegaTheta float64, nr, ntheta int) Tones {
 	t := Tones{M: m}
 	scale := math.Abs(omegaPhi)
+	inside := func(n, k int) bool {
+		return float64(max(n, -n))/float64(nr+1)+float64(max(k, -k))/float64(ntheta+1) < 1-1e-12
+	}
 	for n := -nr; n <= nr; n++ {
 		for k := -ntheta; k <= ntheta; k++ {
 			w := float64(m)*omegaPhi + float64(n)*omegaR + float64(k)*omegaTheta
-			if math.Abs(w) < 1e-9*scale {
+			if !inside(n, k) || math.Abs(w) < 1e-9*scale {
 				continue
 			}
 			t.Omega = append(t.Omega, w)
-			t.Edge = append(t.Edge, nr > 0 && (n == nr || n == -nr) || ntheta > 0 && (k == ntheta || k == -ntheta))
+			t.Edge = append(t.Edge, nr > 0 && !inside(max(n, -n)+1, k) || ntheta > 0 && !inside(n, max(k, -k)+1))
 		}
 	}
 	return t
+}
+
+// Closest returns the smallest distance between two tones: a window of five
+// times 2 pi over it tells all of them apart by itself, one of a fifth of that
+// leaves the work to the normal equations.
+func (t Tones) Closest() float64 {
+	d := math.Inf(1)
+	for i, a := range t.Omega {
+		for _, b := range t.Omega[:i] {
+			d = math.Min(d, math.Abs(a-b))
+		}
+	}
+	return d
 }
 
 // Rates are the fluxes of one m (this sign alone) of a bound orbit: by spherical
