@@ -169,3 +169,18 @@ func FallTrack(r Rung, e, l, from, phi float64, inward bool, until float64) (sou
 	t.States = append(t.States, after...)
 	return t, nil
 }
+
+// Angular returns how many l's to carry on the finest rung at azimuthal number
+// m so that those up to lmax come out to the asked relative accuracy at
+// frequencies up to omega: one beyond lmax without spin (a coarser rung carries
+// one less), and up to some ten more where a omega is of order 1. It is where the
+// ladder starts; what the coupling leaves is in the measured bars.
+func Angular(spin, omega float64, m, lmax int, asked float64) int {
+	n := max(lmax-max(2, m, -m)+1, 1) + 1
+	aw := math.Abs(spin * omega)
+	if spin == 0 {
+		return n
+	}
+	digits := -math.Log10(asked)
+	return n + 1 + int(math.Ceil(0.6*digits*math.Min(1, aw)))
+}
