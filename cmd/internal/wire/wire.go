@@ -58,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
