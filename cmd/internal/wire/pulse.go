@@ -67,7 +67,7 @@ func pulseProblems(c *configs.Case) []configs.Problem {
 
 // newPulseScheme makes the choices of a case.
 func newPulseScheme(c *configs.Case) *pulseScheme {
-	p := source.Pulse{Centre: c.Pulse.Centre, Width: c.Pulse.Width}
+	p := source.Pulse{Centre: c.Pulse.Centre, Width: c.Pulse.Width, Compact: c.Pulse.Shape == "compact"}
 	switch c.Pulse.Moving {
 	case "in":
 		p.Moving = source.Ingoing
