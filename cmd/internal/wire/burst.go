@@ -225,6 +225,15 @@ func (r *burstRun) quietAt() float64 {
 			after += 2
 		}
 	}
+	if r.path.Kind() == configs.Inspiral {
+		// An inspiral has time: its strain counts from here on as well.
+		for _, m := range r.modes {
+			j := r.starts[m]
+			for after < last-200 && j.at(0, after+r.n.domain.So) > r.asked/5*j.peak[0] {
+				after += 2
+			}
+		}
+	}
 	return math.Min(after, last)
 }
 
@@ -374,6 +383,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
 	}
 	delete(res.Conventions, "circular strain")
+	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
 	d := r.n.domain
 	res.Conventions["totals"] = fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", r.after, d.Retarded(r.ends)-1)

@@ -418,6 +418,7 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
 	}
 	delete(res.Conventions, "circular strain")
+	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
 	res.Conventions["averages"] = fmt.Sprintf("fluxes are averages per coordinate time over whole radial periods, window sin^%d over %d of them", 2*r.power, r.power+1)
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its flux counts once"

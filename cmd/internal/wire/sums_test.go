@@ -58,3 +58,21 @@ func TestSpanIsInRetardedTime(t *testing.T) {
 		}
 	}
 }
+
+// TestTailOfARadialFall: modes without angular momentum, each l a seventh of the
+// one before, have a tail of a sixth of the last.
+func TestTailOfARadialFall(t *testing.T) {
+	c := read(t, "waves.l_max=5")
+	res := &result.Result{}
+	for l, e := 2, 7.0*7*7; l <= 5; l, e = l+1, e/7 {
+		res.Modes = append(res.Modes, result.Mode{L: l, Infinity: &result.Flux{Energy: result.Q{Value: e}}})
+	}
+	sumModes(c, res, "total")
+	tail := res.Total.Truncation.Infinity
+	if tail == nil {
+		t.Fatalf("no tail: %s", res.Total.Truncation.Note)
+	}
+	if d := math.Abs(tail.Energy.Value - 1.0/6); d > 1e-12 || tail.AngularMomentum.Value != 0 {
+		t.Errorf("tail %+v, want energy 1/6 and no angular momentum", *tail)
+	}
+}

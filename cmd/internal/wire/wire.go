@@ -137,6 +137,10 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
+	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
+		return planBound(c, choose(c))
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return planBurst(c, choose(c))
 	case c.Pulse != nil:
 		return planPulse(c)
 	}
@@ -155,6 +159,7 @@ func conventions() map[string]string {
 		"sign of flux":      "positive = leaving the orbit: outward at infinity, into the hole at the horizon",
 		"error bars":        "absolute; the truth is claimed inside value +- error",
 		"master functions":  "even: Zerilli-Moncrief, odd: Cunningham-Price-Moncrief; r h_lm = (1/2) sqrt((l+2)!/(l-2)!) (Psi_even + i Psi_odd)",
+		"circular series":   "before junk_until the raw signal of the evolution, from there on the certified tone, without what the switch-on left",
 		"circular strain":   "strain = r h_lm e^{i m phi_p(u)}/mu with phi_p(u) the particle's azimuth at time t = u",
 		"horizon series":    "psi_l_m is the master function on the horizon against advanced time v; dE/dv = (1/64 pi) (l+2)!/(l-2)! |d psi/dv|^2 for each sign of m",
 		"truncation":        "the total holds the listed modes plus the estimated tail beyond l_max, stated apart as truncation",
