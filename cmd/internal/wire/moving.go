@@ -386,6 +386,9 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		}
 		for q := range group {
 			s := junkSeries{dt: runs[0].Dt}
+			if r.half != nil {
+				s.full, s.thin = &runs[0].Samples[q], &runs[2].Samples[q]
+			}
 			if k, ok := r.kind.(interface {
 				moved(m *ladder, runs []*certify.Samples) (start, path [2]float64)
 			}); ok {
@@ -447,6 +450,8 @@ type junkSeries struct {
 
 	moved [2]float64 // what the start-up may change in a table's averaged flux, relative
 	path  [2]float64 // what the rows' rounding and spacing may change in it, relative
+
+	full, thin *certify.Samples // through all rows and every second, on the coarsest rung
 }
 
 // at is the envelope at slice tau.
