@@ -326,7 +326,7 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 			m.met = false
 			m.why = strings.TrimPrefix(m.why+fmt.Sprintf("; at %s the %s holds the bar at %.1e", end, f.energyBar.Largest(), b), "; ")
 			rest := f.energyBar.Transient + f.energyBar.RoundOff
-			if r.rough(m, end) {
+			if r.rough(m, end) && f.energyBar.Discretisation > rest {
 				m.why += ", where the table's rows are too rough for a finer grid to help"
 			} else if f.energyBar.Discretisation > 0.3*math.Max(m.allow[e]-rest, 0) && f.energyBar.Discretisation > f.energyBar.RoundOff {
 				climb = true
@@ -515,6 +515,7 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	sumModes(c, res, rate)
 	verdict(c, res)
+	r.tellDrift(res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, junk, dphi)
 	if s != nil {

@@ -285,3 +285,63 @@ func TestScatteringTable(t *testing.T) {
 	}
 	t.Logf("%v", b.Result.Warnings)
 }
+
+// TestTableRefusals: what cannot be followed or averaged is refused in one
+// sentence that names row and value, or how much is missing.
+func TestTableRefusals(t *testing.T) {
+	w, err := worldline.NewCircular(10, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	good := writeTable(t, w, 0, 700, 1, 5, 17, false)
+	text, err := os.ReadFile(good)
+	if err != nil {
+		t.Fatal(err)
+	}
+	lines := strings.Split(string(text), "\n")
+	row := func(i int, with string) string { // row i counted from 1
+		out := append([]string{}, lines...)
+		out[i] = with
+		return strings.Join(out, "\n")
+	}
+	for _, k := range []struct {
+		name, text, sets string
+		says             []string
+	}{
+		{"horizon", row(51, "55,1.9,1.5"), "", []string{"orbit.file", "row 51, r = 1.9", "horizon"}},
+		{"time", row(51, "54,10,1.5"), "", []string{"\"t\"", "row 51", "does not increase"}},
+		{"word", row(51, "55,ten,1.5"), "", []string{"line 52", "\"r\""}},
+		{"light", row(51, "55,14,1.5"), "", []string{"row 51, r = 14", "faster than light"}},
+		{"gap", strings.Join(append(append([]string{}, lines[:100]...), lines[120:]...), "\n"), "", []string{"row 100, t = 124", "gap"}},
+		{"no column", strings.Replace(string(text), "phi", "angle", 1), "", []string{"phi", "orbit.columns"}},
+		{"short", strings.Join(lines[:500], "\n"), "", []string{"two azimuthal periods", "go on for"}},
+		{"until late", string(text), "span.until=5000", []string{"span.until", "at most"}},
+		{"until early", string(text), "span.until=300", []string{"span.until", "two azimuthal periods"}},
+	} {
+		path := filepath.Join(t.TempDir(), "bad.csv")
+		if err := os.WriteFile(path, []byte(k.text), 0o644); err != nil {
+			t.Fatal(err)
+		}
+		var sets []string
+		if k.sets != "" {
+			sets = []string{k.sets}
+		}
+		_, err := readTable(t, path, sets...)
+		if err == nil {
+			t.Errorf("%s: accepted", k.name)
+			continue
+		}
+		t.Logf("%s: %v", k.name, err)
+		for _, word := range k.says {
+			if !strings.Contains(err.Error(), word) {
+				t.Errorf("%s: %q does not say %q", k.name, err, word)
+			}
+		}
+	}
+	if _, err := readTable(t, good); err != nil {
+		t.Errorf("the good table is refused: %v", err)
+	}
+	if _, err := readTable(t, filepath.Join(t.TempDir(), "none.csv")); err == nil || !strings.Contains(err.Error(), "none.csv") {
+		t.Errorf("a missing file: %v", err)
+	}
+}

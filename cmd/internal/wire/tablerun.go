@@ -56,7 +56,7 @@ func (p *tablePath) plan(n *numerics, c *configs.Case) (averaging, error) {
 		if a.radial {
 			what = "radial"
 		}
-		return a, &tooShort{what: what, have: math.Max(have, 0), need: 2*a.period - (end - quiet), untilKey: asked && end < lastSlice(p, n, p.last)-2*a.period}
+		return a, &tooShort{what: what, have: math.Max(have, 0), need: 2*a.period - (end - quiet), untilKey: asked && lastSlice(p, n, p.last)-quiet >= 2*a.period}
 	}
 	if fits := int(have) - 1; fits < a.power {
 		a.power = max(fits, 1)
@@ -268,7 +268,31 @@ func (r *climb) choice(ctx context.Context, p *tablePath, until float64, energy 
 func tellChoice(c *configs.Case, res *result.Result, difference float64) {
 	res.Orbit.Numbers["own_energy_difference"] = difference
 	if math.Abs(difference) > c.Accuracy.Relative {
-		res.Warnings = append(res.Warnings, fmt.Sprintf("the table's E and L are not those of its velocity, which are used here: with the table's own the radiated energy of the strongest modes changes by %.2g of it", difference))
+		res.Warnings = append(res.Warnings, fmt.Sprintf("the table's E and L are not those of its velocity, which are used here: with the table's own the radiated energy of the strongest modes would change by %+.2g of itself", difference))
 	}
 	res.Conventions["constants"] = "E and L of the source are those of the momentary velocity, u^t from its norm; own_energy_difference is what the table's own columns would change, relative"
+}
+
+// tellDrift says how much the averaged flux of the strongest mode changes from
+// one period to the next, where the start-up does not explain it.
+func (r *boundRun) tellDrift(res *result.Result) {
+	var top *ladder
+	for _, m := range r.modes {
+		if top == nil || m.mov.flux[0].energy > top.mov.flux[0].energy {
+			top = m
+		}
+	}
+	if r.table == nil || top == nil {
+		return
+	}
+	e0, _, err0 := r.mean(top.runs[top.rung], top, certify.Infinity, r.n.until)
+	e1, _, err1 := r.mean(top.runs[top.rung], top, certify.Infinity, r.n.until-r.period)
+	if err0 != nil || err1 != nil {
+		return
+	}
+	change := (e0 - e1) / e0
+	res.Orbit.Numbers["flux_change_per_period"] = change
+	if math.Abs(change) > 2*math.Max(r.starts[top].moved[0], top.mov.flux[0].energyBar.Bar()) {
+		res.Warnings = append(res.Warnings, fmt.Sprintf("the orbit changes: the averaged flux of the mode (%d,%d) grows by %.2g of itself in one period, and the averages hold for their window (see conventions)", top.l, top.m, change))
+	}
 }
