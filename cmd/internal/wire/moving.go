@@ -214,7 +214,9 @@ func (r *boundRun) settling(s *certify.Samples, m *ladder, end certify.End, unti
 		if math.IsInf(c, 1) || b == c {
 			rho = 0.5
 		}
-		return math.Abs(a-b) * math.Max(rho/(1-rho), 1)
+		// A geometric series would leave rho/(1-rho) of the last change, a power
+		// t^-n by (n+1)/n more: 1.5 holds for n >= 2.
+		return math.Abs(a-b) * math.Max(1.5*rho/(1-rho), 1)
 	}
 	return left(e0, e1, e2) / e0, left(s0, s1, s2) / math.Max(math.Abs(s0), 1e-300), nil
 }
@@ -262,6 +264,7 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 		}
 		round := 2 * certify.RoundOff(m.points[m.rung], math.Max(1, float64(m.m))*r.numbers["omega_phi"])
 		path := r.pathError(m)
+		edges := certify.WindowError(m.runs[m.rung], end, m.until, r.period, r.power)
 		bar := func(x [3]float64, settle float64) certify.Budget {
 			d := math.Max(math.Abs(x[0]-x[1]), 0.02*far*math.Abs(x[0]))
 			if count > 2 {
@@ -269,7 +272,7 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 			}
 			return certify.Budget{
 				Discretisation: certify.Leftover(min(r.n.order, r.n.moments))*d/math.Max(math.Abs(x[0]), 1e-300) + path,
-				Transient:      settle, RoundOff: round,
+				Transient:      settle, RoundOff: round + edges,
 			}
 		}
 		f := &m.mov.flux[e]
