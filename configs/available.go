@@ -13,9 +13,14 @@ var features = map[string]bool{
 	"orbit.kind " + Table:         false,
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,
-	"pulse":                       false,
+	pulsesTeukolsky:               true,
+	"pulse":                       true,
 	"model":                       true,
 }
+
+// pulsesTeukolsky is the Teukolsky equation for pulses, apart from its use for
+// particles.
+const pulsesTeukolsky = "waves.equation " + Teukolsky + " with pulse"
 
 // lacks reports whether the feature is known and switched off.
 func (r Reader) lacks(feature string) bool {

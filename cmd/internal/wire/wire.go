@@ -58,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
@@ -126,6 +126,8 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 		return runBound(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
 		return runBurst(ctx, c, choose(c), o)
+	case c.Pulse != nil:
+		return runPulse(ctx, c, o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
@@ -139,6 +141,8 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 		return planBound(c, choose(c))
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
 		return planBurst(c, choose(c))
+	case c.Pulse != nil:
+		return planPulse(c)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
