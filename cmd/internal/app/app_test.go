@@ -485,7 +485,7 @@ func TestPlanShowsAndEvolvesNothing(t *testing.T) {
 func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	room(t)
 	check := verify.Check{Group: "equation", Name: "(2,2) energy", Source: verify.Source{Short: "invented", Full: "invented for this test"},
-		Published: 1e-4, Cases: [][]string{{"orbit.radius=7"}}, Ours: func(r []*result.Result) (result.Q, error) {
+		Published: 1e-4, Cases: []verify.Case{{Shipped: "circular.yaml", Changes: []string{"orbit.radius=7"}}}, Ours: func(r []*result.Result) (result.Q, error) {
 			return r[0].Find(2, 2).Infinity.Energy, nil
 		}}
 	do := func(args ...string) outcome {
@@ -511,8 +511,8 @@ func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 func TestVerifysCasesAreGoodInput(t *testing.T) {
 	c := &command{engine: fake(nil)}
 	for _, check := range verify.Checks() {
-		for _, changes := range check.Cases {
-			if _, err := c.shipped("circular.yaml", changes); err != nil {
+		for _, v := range check.Cases {
+			if _, err := c.shipped(v.Shipped, v.Changes); err != nil {
 				t.Errorf("%s, %s: %v", check.Group, check.Name, err)
 			}
 		}

@@ -32,8 +32,8 @@ func (c *command) verifyCommand() *cobra.Command {
 func (c *command) verify(cmd *cobra.Command) error {
 	m := newMeter(c.stderr, c.quiet)
 	defer m.stop()
-	run := func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
-		kase, err := c.shipped("circular.yaml", changes)
+	run := func(ctx context.Context, vc verify.Case, i, n int) (*result.Bundle, error) {
+		kase, err := c.shipped(vc.Shipped, vc.Changes)
 		if err != nil {
 			return nil, err
 		}

@@ -17,10 +17,10 @@ import (
 // given is a runner that answers with the independent table itself, its
 // numbers carrying a relative bar and moved by a part of it.
 func given(bar, moved float64) Runner {
-	return func(_ context.Context, changes []string, _, _ int) (*result.Bundle, error) {
+	return func(_ context.Context, c Case, _, _ int) (*result.Bundle, error) {
 		r := &result.Result{}
 		for _, r0 := range []float64{6, 10} {
-			if !slices.Contains(changes, circular(r0, 8, "x")[0]) {
+			if !slices.Contains(c.Changes, circular(r0, 8, "x").Changes[0]) {
 				continue
 			}
 			ref := referenceOrbit(r0)
@@ -107,13 +107,13 @@ func TestPassAndFail(t *testing.T) {
 func TestACaseIsRunOnce(t *testing.T) {
 	times, of := map[string]int{}, 0
 	inner := given(1e-6, 0.3)
-	_, err := Run(context.Background(), Checks(), func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
+	_, err := Run(context.Background(), Checks(), func(ctx context.Context, c Case, i, n int) (*result.Bundle, error) {
 		if i != len(times) {
 			t.Errorf("case %d is called number %d", len(times), i)
 		}
 		of = n
-		times[strings.Join(changes, " ")]++
-		return inner(ctx, changes, i, n)
+		times[c.key()]++
+		return inner(ctx, c, i, n)
 	}, true)
 	if err != nil {
 		t.Fatal(err)
@@ -163,7 +163,7 @@ func TestWhatCannotBeFoundFails(t *testing.T) {
 
 func TestAnEndedContextEndsTheChecks(t *testing.T) {
 	ctx, cancel := context.WithCancel(context.Background())
-	_, err := Run(ctx, only(Checks()), func(context.Context, []string, int, int) (*result.Bundle, error) {
+	_, err := Run(ctx, only(Checks()), func(context.Context, Case, int, int) (*result.Bundle, error) {
 		cancel()
 		return nil, ctx.Err()
 	}, false)
