@@ -52,10 +52,13 @@ func promise() Source {
 func Checks() []Check {
 	var all []Check
 	all = append(all, equationChecks()...)
+	all = append(all, ringingChecks()...)
 	all = append(all, slicingChecks()...)
+	all = append(all, tailChecks()...)
 	all = append(all, sourceChecks()...)
 	all = append(all, extractionChecks()...)
 	all = append(all, barChecks()...)
+	all = append(all, pulseBarChecks()...)
 	return all
 }
 

@@ -66,7 +66,7 @@ func (o *Outcome) Table(w io.Writer, colour bool) error {
 			b.WriteString(wrapped("  "+r.Source+": "+r.Citation+".", 100, "    "))
 		}
 	}
-	b.WriteString("\nUnits G = c = M = 1, fluxes in (mu/M)^2, m and -m together. apart = |ours - published| in units of\n" +
+	b.WriteString("\nUnits G = c = M = 1, fluxes in (mu/M)^2, m and -m together, frequencies in 1/M. apart = |ours - published| in units of\n" +
 		"our error bar plus what the source claims for its digits; a check passes up to 1. A case that several\n" +
 		"checks need is run once, for the first of them (column s: seconds).\n\n")
 	if o.Passed {

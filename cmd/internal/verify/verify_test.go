@@ -19,6 +19,25 @@ import (
 func given(bar, moved float64) Runner {
 	return func(_ context.Context, c Case, _, _ int) (*result.Bundle, error) {
 		r := &result.Result{}
+		switch c.Shipped {
+		case "ringing.yaml":
+			q := func(x float64) result.Q {
+				return result.Q{Value: x * (1 + moved*bar), Error: math.Abs(x) * bar}
+			}
+			for _, t := range gravitational() {
+				for _, where := range []string{"infinity", "horizon"} {
+					for m := t.l - 1; m <= t.l; m++ {
+						r.Ringing = append(r.Ringing, result.Ringing{L: t.l, M: m, N: t.n, Re: q(t.re), Im: q(t.im), Where: where})
+					}
+				}
+			}
+			return &result.Bundle{Result: r}, nil
+		case "tail.yaml":
+			for where, p := range map[string]float64{"infinity": 4, "horizon": 7, "radius 10": 7} {
+				r.Tail = append(r.Tail, result.Tail{L: 2, M: 1, Where: where, Exponent: result.Q{Value: p * (1 + moved*bar), Error: p * bar}})
+			}
+			return &result.Bundle{Result: r}, nil
+		}
 		for _, r0 := range []float64{6, 10} {
 			if !slices.Contains(c.Changes, circular(r0, 8, "x").Changes[0]) {
 				continue
@@ -53,7 +72,7 @@ func only(all []Check) []Check {
 
 func TestPassAndFail(t *testing.T) {
 	checks := only(Checks())
-	if len(checks) < 30 {
+	if len(checks) < 50 {
 		t.Fatalf("only %d checks", len(checks))
 	}
 	out, err := Run(context.Background(), checks, given(1e-6, 0.3), false)
