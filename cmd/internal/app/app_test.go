@@ -500,6 +500,16 @@ func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	if got := do("verify"); got.code != ExitNotMet || !strings.Contains(got.stdout, "FAIL") || got.stderr != "" {
 		t.Errorf("a changed value: exit %d: %s%s", got.code, got.stdout, got.stderr)
 	}
+	page := filepath.Join(t.TempDir(), "verify.html")
+	if got := do("verify", "--page", page); got.code != ExitNotMet {
+		t.Errorf("exit %d with a page: %s", got.code, got.stderr)
+	}
+	if text, err := os.ReadFile(page); err != nil || !strings.Contains(string(text), "invented for this test") || !strings.Contains(string(text), "1 of 1 checks FAILED") {
+		t.Errorf("%v: page\n%s", err, text)
+	}
+	if got := do("verify", "--page", filepath.Join(page, "below", "x.html")); got.code != ExitFiles || got.stdout != "" {
+		t.Errorf("a page into nowhere: exit %d: %s", got.code, got.stderr)
+	}
 	got := do("verify", "--json")
 	var o verify.Outcome
 	if err := json.Unmarshal([]byte(got.stdout), &o); err != nil || got.code != ExitNotMet || o.Passed || len(o.Checks) != 1 {

@@ -4,7 +4,9 @@ import (
 	"bytes"
 	"context"
 	"encoding/json"
+	"encoding/xml"
 	"errors"
+	"io"
 	"math"
 	"math/big"
 	"slices"
@@ -251,6 +253,44 @@ func TestTableShowsEverything(t *testing.T) {
 	}
 	if strings.Count(text, failed) != 3 { // two rows and the last line
 		t.Errorf("two checks fail, the table says:\n%s", text)
+	}
+	var page bytes.Buffer
+	if err := out.Page(&page, "build <1>"); err != nil {
+		t.Fatal(err)
+	}
+	decoder := xml.NewDecoder(bytes.NewReader(page.Bytes()))
+	decoder.Strict, decoder.AutoClose, decoder.Entity = false, xml.HTMLAutoClose, xml.HTMLEntity
+	var words strings.Builder
+	rows := 0
+	for {
+		token, err := decoder.Token()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			t.Fatalf("the page: %v", err)
+		}
+		switch v := token.(type) {
+		case xml.CharData:
+			words.Write(v)
+		case xml.StartElement:
+			if v.Name.Local == "th" && len(v.Attr) == 1 && v.Attr[0].Value == "row" {
+				rows++
+			}
+			for _, a := range v.Attr {
+				if a.Name.Local == "src" || a.Name.Local == "href" {
+					t.Errorf("the page wants %s", a.Value)
+				}
+			}
+		}
+	}
+	if rows != len(checks) || !strings.Contains(words.String(), "build <1>") || strings.Count(words.String(), failed) != 3 {
+		t.Errorf("the page has %d rows for %d checks", rows, len(checks))
+	}
+	for _, c := range checks {
+		if !strings.Contains(words.String(), c.Name) || !strings.Contains(words.String(), c.Source.Full) {
+			t.Errorf("the page lacks %q or its source", c.Name)
+		}
 	}
 	if strings.Contains(text, "\x1b") || !strings.Contains(coloured.String(), "\x1b[") {
 		t.Error("colours where there should be none, or none where there should")
