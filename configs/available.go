@@ -10,7 +10,7 @@ var features = map[string]bool{
 	"orbit.kind " + Infall:        true,
 	"orbit.kind " + Scatter:       true,
 	"orbit.kind " + Inspiral:      true,
-	"orbit.kind " + Table:         false,
+	"orbit.kind " + Table:         true,
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: false,
 	pulsesTeukolsky:               true,

@@ -58,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
@@ -128,6 +128,8 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 		return runBurst(ctx, c, choose(c), o)
 	case c.Pulse != nil:
 		return runPulse(ctx, c, o)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return runTable(ctx, c, choose(c), o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
@@ -143,6 +145,8 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 		return planBurst(c, choose(c))
 	case c.Pulse != nil:
 		return planPulse(c)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return planTable(c, choose(c))
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
