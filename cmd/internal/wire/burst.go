@@ -468,8 +468,32 @@ func checkBurst(c *configs.Case) []configs.Problem {
 	}
 	switch c.Orbit.Kind {
 	case configs.Infall, configs.Scatter, configs.Inspiral:
-		_, err := burstPath(c)
-		return refusal(err)
+		w, err := burstPath(c)
+		if err != nil {
+			return refusal(err)
+		}
+		if c.Orbit.Kind == configs.Infall && c.Orbit.From <= 3.5 {
+			return []configs.Problem{{Key: "orbit.from", Value: c.Orbit.From, Want: "a start radius above 3.5: from there on the particle is at the light ring (r = 3) before its source could be switched on"}}
+		}
+		if c.Span.Until == nil {
+			return nil
+		}
+		// The event, and some of what follows it.
+		var s worldline.State
+		event := eventTime(w)
+		w.At(event, &s)
+		if least := event - math.Max(s.Rstar, 0) + 60; *c.Span.Until < least {
+			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+				"at least %.0f: the waves of the %s arrive around u = %.0f (or leave span out)", math.Ceil(least), eventName(w), least-60)}}
+		}
 	}
 	return nil
+}
+
+// eventName is what eventTime finds, in words.
+func eventName(w worldline.Worldline) string {
+	if w.Kind() == configs.Scatter {
+		return "passage through periastron"
+	}
+	return "plunge"
 }

@@ -20,21 +20,47 @@ const nsPerPoint = 4.0
 // first, never wants more in its first round.
 func planCircular(c *configs.Case, n numerics) (*Plan, error) {
 	r := newCircularRun(c, n, Options{})
-	p := &Plan{Orbit: r.describe(), Warnings: Warnings(c)}
+	for _, m := range r.modes {
+		m.allow = [2]float64{r.asked, r.asked}
+		m.rung = r.startRung(m)
+	}
+	return planOf(c, r.climb, r.describe(), 250), nil
+}
+
+// planBound foresees a bound orbit with radial motion.
+func planBound(c *configs.Case, n numerics) (*Plan, error) {
+	r, err := newBoundRun(c, n, Options{})
+	if err != nil {
+		return nil, err
+	}
+	return planOf(c, r.climb, describePath(r.path), r.period), nil
+}
+
+// planBurst foresees a transient; its end is fixed by the orbit.
+func planBurst(c *configs.Case, n numerics) (*Plan, error) {
+	r, err := newBurstRun(c, n, Options{})
+	if err != nil {
+		return nil, err
+	}
+	return planOf(c, r.climb, describePath(r.path), 0), nil
+}
+
+// planOf books the first round of a climb; wait is how much longer than its first
+// try a mode runs on average until its start-up has decayed.
+func planOf(c *configs.Case, r *climb, orbit *result.Orbit, wait float64) *Plan {
+	p := &Plan{Orbit: orbit, Warnings: Warnings(c)}
 	type lot struct {
 		until float64
 		modes int
 	}
 	lots := map[int]*lot{}
 	for _, m := range r.modes {
-		m.allow = [2]float64{r.asked, r.asked}
-		m.rung = r.startRung(m)
 		g := r.n.grid(m.rung)
-		until := r.firstUntil(m) + 250
+		until := r.firstUntil(m) + wait
 		if r.n.until > 0 {
 			until = r.n.until
 		}
-		p.Modes = append(p.Modes, PlannedMode{L: m.circ.tone.L, M: m.circ.tone.M, Points: g.N, Dx: g.Dx,
+		p.Modes = append(p.Modes, PlannedMode{L: m.l, M: m.m, Points: g.N, Dx: g.Dx,
 			Dt: r.n.courant * g.Dx, Kernel: r.n.cells * g.Dx, Until: until, Rung: m.rung})
 		if lots[m.rung] == nil {
 			lots[m.rung] = &lot{}
@@ -69,5 +95,5 @@ func planCircular(c *configs.Case, n numerics) (*Plan, error) {
 		p.Rungs = append(p.Rungs, *rungs[k])
 	}
 	p.MemoryBytes += 40 << 20
-	return p, nil
+	return p
 }
