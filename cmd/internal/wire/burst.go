@@ -34,6 +34,7 @@ type burstRun struct {
 	ends    float64 // slice time at which the evolution ends
 	event   float64 // when the orbit does what it is run for
 	after   float64 // retarded time from which numbers count
+	open    [2]bool // the particle comes from, and goes to, infinity
 	starts  map[*ladder]junkSeries
 	largest float64 // radiated energy of the strongest mode, per both signs
 	turning bool    // goes round many times before the event
@@ -115,6 +116,7 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 			r.n.until -= t.origin
 		}
 	}
+	r.open[0], r.open[1] = openEnds(c)
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
@@ -343,7 +345,12 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 			count++
 		}
 		f := &m.mov.flux[e]
-		f.energy, f.spin = c*x[0].Power, c*float64(m.m)*x[0].Spin
+		var more radiated
+		if certify.End(e) == certify.Infinity {
+			more = r.outside(m, m.runs[m.rung])
+		}
+		power, spin := x[0].Power+more.power, x[0].Spin+more.spin
+		f.energy, f.spin = c*power, c*float64(m.m)*spin
 		disc := func(a, b, g float64) float64 {
 			v := math.Abs(a - b)
 			if count > 2 {
@@ -355,12 +362,12 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 		dr, dphi := r.path.Uncertainty()
 		path := 2*dr + 2*float64(m.m)*dphi
 		f.energyBar = certify.Budget{
-			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/x[0].Power + path,
-			Transient:      start / x[0].Power, RoundOff: 2 * round,
+			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/power + path,
+			Transient:      start / power, Range: more.powerBar / power, RoundOff: 2 * round,
 		}
 		f.spinBar = certify.Budget{
-			Discretisation: disc(x[0].Spin, x[1].Spin, x[2].Spin)/math.Max(math.Abs(x[0].Spin), 1e-300) + path,
-			Transient:      start / math.Max(x[0].Power, 1e-300), RoundOff: 2 * round,
+			Discretisation: disc(x[0].Spin, x[1].Spin, x[2].Spin)/math.Max(math.Abs(spin), 1e-300) + path,
+			Transient:      start / math.Max(power, 1e-300), Range: more.spinBar / math.Max(math.Abs(spin), 1e-300), RoundOff: 2 * round,
 		}
 		if m.m == 0 {
 			f.spinBar = certify.Budget{}
@@ -424,8 +431,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	delete(res.Conventions, "circular strain")
 	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
-	d := r.n.domain
-	res.Conventions["totals"] = fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", r.after+r.origin, d.Retarded(r.ends)-1+r.origin)
+	res.Conventions["totals"] = r.rangeWords()
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its energy counts once"
 	if r.falls {
 		res.Conventions["horizon"] = "the particle crosses the horizon: its own field passes there, and no absorbed total is given"
@@ -462,7 +468,7 @@ func (r *burstRun) entry(m *ladder, rung int) result.Mode {
 		L: m.l, M: m.m, Parity: m.parity.String(), Measure: total, Counts: counts, Infinity: at(f[certify.Infinity]),
 		Met: m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
-			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "round-off": f[0].energyBar.RoundOff,
+			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "outside the range": f[0].energyBar.Range, "round-off": f[0].energyBar.RoundOff,
 		},
 	}
 	if !r.falls {
@@ -524,8 +530,32 @@ func checkBurst(c *configs.Case) []configs.Problem {
 	}
 	switch c.Orbit.Kind {
 	case configs.Infall, configs.Scatter, configs.Inspiral:
-		_, err := burstPath(c)
-		return refusal(err)
+		w, err := burstPath(c)
+		if err != nil {
+			return refusal(err)
+		}
+		if c.Orbit.Kind == configs.Infall && c.Orbit.From <= 3.5 {
+			return []configs.Problem{{Key: "orbit.from", Value: c.Orbit.From, Want: "a start radius above 3.5: from there on the particle is at the light ring (r = 3) before its source could be switched on"}}
+		}
+		if c.Span.Until == nil {
+			return nil
+		}
+		// The event, and some of what follows it.
+		var s worldline.State
+		event := eventTime(w)
+		w.At(event, &s)
+		if least := event - math.Max(s.Rstar, 0) + 60; *c.Span.Until < least {
+			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+				"at least %.0f: the waves of the %s arrive around u = %.0f (or leave span out)", math.Ceil(least), eventName(w), least-60)}}
+		}
 	}
 	return nil
+}
+
+// eventName is what eventTime finds, in words.
+func eventName(w worldline.Worldline) string {
+	if w.Kind() == configs.Scatter {
+		return "passage through periastron"
+	}
+	return "plunge"
 }

@@ -7,6 +7,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"slices"
 
 	"nullmark/configs"
@@ -81,8 +82,24 @@ func checkEccentric(c *configs.Case) []configs.Problem {
 	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
 		return nil
 	}
-	_, err := newEccentric(c.Orbit)
-	return refusal(err)
+	if _, err := newEccentric(c.Orbit); err != nil {
+		return refusal(err)
+	}
+	if c.Span.Until == nil || c.Waves.Equation != configs.Master {
+		return nil
+	}
+	r, err := newBoundRun(c, choose(c), Options{})
+	if err != nil {
+		return refusal(err)
+	}
+	// The average and the one a period before it, which tells what the start-up
+	// still leaves.
+	if least := r.n.on() + r.window() + r.period; r.n.until < least {
+		return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+			"at least %.0f: averages at this accuracy take %d radial periods of %.6g M after the start-up, and one more to see that they have settled (or leave span out)",
+			math.Ceil(least-r.n.domain.So), r.power+1, r.period)}}
+	}
+	return nil
 }
 
 // refusal turns what a worldline says of impossible parameters into a problem of
@@ -108,6 +125,9 @@ func Warnings(c *configs.Case) []string {
 			}
 		}
 	}
+	if c.Orbit != nil && c.Orbit.Kind == configs.Inspiral && c.Orbit.MassRatio > 1e-2 {
+		w = append(w, fmt.Sprintf("orbit.mass_ratio %g is above 0.01: the waves are those of the first order in it, and what the second order adds is of the size of the mass ratio itself", c.Orbit.MassRatio))
+	}
 	if c.Accuracy.Relative < 5e-12 {
 		w = append(w, fmt.Sprintf("accuracy.relative %.3g is below what double precision reaches (about 5e-12 in a flux): expect \"not met\"", c.Accuracy.Relative))
 	}
@@ -124,7 +144,7 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return runBound(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return runBurst(ctx, c, choose(c), o)
 	case c.Pulse != nil:
 		return runPulse(ctx, c, o)
@@ -133,6 +153,9 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
+
+// transients are the kinds of orbit that come and go, or plunge.
+func transients() []string { return []string{configs.Infall, configs.Scatter, configs.Inspiral} }
 
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
@@ -147,6 +170,8 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 		return planPulse(c)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
 		return planTable(c, choose(c))
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
+		return planBurst(c, choose(c))
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
