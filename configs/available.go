@@ -12,7 +12,7 @@ var features = map[string]bool{
 	"orbit.kind " + Inspiral:      true,
 	"orbit.kind " + Table:         false,
 	"waves.equation " + Master:    true,
-	"waves.equation " + Teukolsky: false,
+	"waves.equation " + Teukolsky: true,
 	"pulse":                       false,
 	"model":                       true,
 }

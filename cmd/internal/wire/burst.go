@@ -467,7 +467,7 @@ func (r *climb) seriesOf(c *configs.Case, path worldline.Worldline, junk map[*la
 
 // checkBurst passes on what the worldline refuses.
 func checkBurst(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch c.Orbit.Kind {
