@@ -525,7 +525,7 @@ func since(times []float64, origin float64) []float64 {
 
 // checkBurst passes on what the worldline refuses.
 func checkBurst(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch c.Orbit.Kind {

@@ -59,11 +59,11 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable, checkKerr}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch r := c.Orbit.Radius; {
@@ -79,7 +79,7 @@ func checkCircular(c *configs.Case) []configs.Problem {
 
 // checkEccentric passes on what the worldline refuses.
 func checkEccentric(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	if _, err := newEccentric(c.Orbit); err != nil {
@@ -115,7 +115,9 @@ func refusal(err error) []configs.Problem {
 // Warnings returns what a user should know about a valid case, a sentence each.
 func Warnings(c *configs.Case) []string {
 	var w []string
-	if c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Hole.Spin == 0 {
+	if c.Waves.Equation == configs.Teukolsky {
+		w = kerrWarnings(c)
+	} else if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
 		if r := c.Orbit.Radius; r < hyperboloidal.ISCORadius {
 			w = append(w, fmt.Sprintf("the circular orbit at r = %g lies inside the innermost stable one (r = 6): it is unstable, and the numbers hold for a particle kept on it", r))
 		}
@@ -140,6 +142,8 @@ func Warnings(c *configs.Case) []string {
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular:
+		return runKerrCircular(ctx, c, o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
