@@ -137,6 +137,8 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular:
+		return planKerrCircular(c)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
