@@ -83,3 +83,27 @@ func (f *kerrForesight) finish() {
 	}
 	f.p.MemoryBytes += 40 << 20
 }
+
+// planKerrBound foresees an orbit with radial or polar motion.
+func planKerrBound(c *configs.Case) (*Plan, error) {
+	r, err := newKerrBound(c, Options{})
+	if err != nil {
+		return nil, err
+	}
+	p := &Plan{Orbit: r.describe(c), Warnings: Warnings(c)}
+	f := newKerrForesight(p, &r.n)
+	v2 := math.Pow(math.Abs(r.orbit.OmegaPhi), 2./3)
+	for _, t := range r.ms {
+		falls := int(math.Ceil(math.Log(r.asked)/math.Log(v2))) + 1
+		t.last = max(t.last, lowest(t.m)+falls-1)
+		r.carry(t)
+		until := r.n.until
+		if until == 0 {
+			until = r.firstUntil(300)
+		}
+		f.look(t.m, t.n, r.firstUntil(60))
+		f.book(t.m, t.n, t.asked, t.rung, until)
+	}
+	f.finish()
+	return p, nil
+}
