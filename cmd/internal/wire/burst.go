@@ -112,6 +112,7 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 	r.turning = w.Kind() == configs.Inspiral
 	if t, ok := w.(*tablePath); ok {
 		r.table, r.origin = t, t.origin
+		r.half, r.halved = t.thin()
 		if r.n.until > 0 {
 			r.n.until -= t.origin
 		}
@@ -361,6 +362,13 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 		start := r.starts[m].energy(e, from, x[0].Power)
 		dr, dphi := r.path.Uncertainty()
 		path := 2*dr + 2*float64(m.m)*dphi
+		if s := r.starts[m]; s.thin != nil {
+			a, b := certify.Integrate(s.full, certify.End(e), from, until, 0.25), certify.Integrate(s.thin, certify.End(e), from, until, 0.25)
+			path = r.halved * math.Abs(a.Power-b.Power) / a.Power
+			if a.Spin != 0 {
+				path = math.Max(path, r.halved*math.Abs(a.Spin-b.Spin)/math.Abs(a.Spin))
+			}
+		}
 		f.energyBar = certify.Budget{
 			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/power + path,
 			Transient:      start / power, Range: more.powerBar / power, RoundOff: 2 * round,

@@ -182,6 +182,10 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 		return planTable(c, choose(c))
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return planBurst(c, choose(c))
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return planTable(c, choose(c))
+	case c.Pulse != nil:
+		return planPulse(c)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
