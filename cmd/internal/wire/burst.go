@@ -41,6 +41,12 @@ type burstRun struct {
 
 // burstPath makes the worldline of a transient case.
 func burstPath(c *configs.Case) (worldline.Worldline, error) {
+	return burstPathOf(c, worldline.FollowFrequency)
+}
+
+// burstPathOf is burstPath with the torque of an inspiral continued through the
+// plunge in one of the ways there are.
+func burstPathOf(c *configs.Case, through worldline.Continuation) (worldline.Worldline, error) {
 	o := c.Orbit
 	switch o.Kind {
 	case configs.Infall:
@@ -52,7 +58,7 @@ func burstPath(c *configs.Case) (worldline.Worldline, error) {
 		if err != nil {
 			return nil, err
 		}
-		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive})
+		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive, Continue: through})
 	}
 	return nil, fmt.Errorf("orbit.kind %s is not a transient", o.Kind)
 }
@@ -86,7 +92,7 @@ func eventTime(w worldline.Worldline) float64 {
 }
 
 func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
-	w, err := burstPath(c)
+	w, err := burstPathOf(c, n.through)
 	if err != nil {
 		return nil, err
 	}
@@ -400,7 +406,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	if s != nil {
 		s.JunkUntil = r.after
 	}
-	return &result.Bundle{Result: res, Series: s}, nil
+	return &result.Bundle{Result: res, Series: s, Spectrum: r.spectrumOf(res)}, nil
 }
 
 func (r *burstRun) entry(m *ladder, rung int) result.Mode {
