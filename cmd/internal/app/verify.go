@@ -33,7 +33,7 @@ func (c *command) verify(cmd *cobra.Command) error {
 	m := newMeter(c.stderr, c.quiet)
 	defer m.stop()
 	run := func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
-		kase, err := c.shipped("circular.yaml", changes)
+		kase, err := c.shipped(verify.Base(changes))
 		if err != nil {
 			return nil, err
 		}

@@ -14,6 +14,7 @@ const (
 	groupSlicing    = "slicing"
 	groupSource     = "source"
 	groupExtraction = "extraction"
+	groupOrbits     = "orbits"
 	groupBars       = "error bars"
 )
 
@@ -55,6 +56,7 @@ func Checks() []Check {
 	all = append(all, slicingChecks()...)
 	all = append(all, sourceChecks()...)
 	all = append(all, extractionChecks()...)
+	all = append(all, orbitChecks()...)
 	all = append(all, barChecks()...)
 	return all
 }

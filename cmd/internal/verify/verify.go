@@ -25,14 +25,14 @@ const Schema = "nullmark.verification/1"
 
 // A Check is one published number and the way to find it with this tool.
 type Check struct {
-	Group     string  // "equation", "slicing", "source", "extraction" or "error bars"
+	Group     string  // "equation", "slicing", "source", "extraction", "orbits" or "error bars"
 	Name      string  // what is compared, with its place
 	Source    Source  // where Published comes from
 	Published float64 // the number there
 	Tolerance float64 // absolute: what the source claims for it, at least half a unit of its last digit
 	Slow      bool    // runs only when asked for
-	// Cases are what has to be run for it, each the shipped circular case with
-	// some keys changed, written "key.path=value".
+	// Cases are what has to be run for it, each a shipped case with some keys
+	// changed, written "key.path=value"; see Base.
 	Cases [][]string
 	// Ours finds the same number with its error bar in the results of Cases,
 	// which come in the same order and are not to be modified.
@@ -73,8 +73,18 @@ type Outcome struct {
 	Checks  []Row   `json:"checks"`
 }
 
-// A Runner runs the shipped circular case with these changes. It is the i-th of
-// n cases, counted from 0.
+// Base is the shipped case file that the changes of a case refer to, and the
+// changes proper: a first entry without "=" names the file, else it is
+// circular.yaml.
+func Base(changes []string) (file string, sets []string) {
+	if len(changes) > 0 && !strings.Contains(changes[0], "=") {
+		return changes[0], changes[1:]
+	}
+	return "circular.yaml", changes
+}
+
+// A Runner runs a shipped case with these changes (see Base). It is the i-th of n
+// cases, counted from 0.
 type Runner func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error)
 
 // Run runs the checks in their order, the slow ones only when long is set, and
