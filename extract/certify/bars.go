@@ -48,7 +48,7 @@ const (
 	// roundFactor times epsilon N^2 is the round-off of second differences on
 	// N points; lowFrequency/Omega takes over for slow modes, in which it adds
 	// up for longer.
-	roundFactor  = 0.015
+	roundFactor  = 0.02
 	lowFrequency = 0.003
 )
 

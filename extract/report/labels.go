@@ -50,6 +50,8 @@ func unitOf(key string) string {
 		return false
 	}
 	switch {
+	case has("amplitude_slope"):
+		return "1/M"
 	case has("slope", "curvature"):
 		return "1/M²"
 	case has("omega", "frequency"):

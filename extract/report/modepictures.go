@@ -200,7 +200,7 @@ func budgetPicture(r *result.Result) (picture, bool) {
 	title := "What the error bars are made of"
 	c := newCanvas("budget", pictureWidth, bottom+48, title,
 		"Parts of the relative error bar of each mode ("+strings.Join(names, ", ")+") on a logarithmic axis, with a line at the asked accuracy "+askedNumber(asked)+".")
-	newPanel(c, "frame", axis{from: left, to: right, bare: true}, y, "", "relative error of the strain", 9)
+	newPanel(c, "frame", axis{from: left, to: right, bare: true}, y, "", "part of the relative bar", 9)
 	l := layOut(r.Modes, left, right)
 	l.draw(c, left, bottom, top)
 	if asked > 0 {
@@ -222,7 +222,7 @@ func budgetPicture(r *result.Result) (picture, bool) {
 			c.marker(k, l.at[i], y.at(v), size, fmt.Sprintf("s%d", k%markers))
 		}
 	}
-	caption := "Each mode’s relative error bar of the strain, split into its named parts. Parts of size zero are not drawn."
+	caption := "Each mode’s relative error bar, of the strain on circular orbits and of the energy otherwise, split into its named parts. Parts of size zero are not drawn."
 	if f := r.Accuracy.Floor; f > 0 {
 		caption += " Modes below " + askedNumber(f) + " of the largest are held to that size instead of the line."
 	}

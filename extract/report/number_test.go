@@ -156,3 +156,17 @@ func TestTicksAreRoundAndInside(t *testing.T) {
 		t.Errorf("a negative value sits at %v of a logarithmic axis", at)
 	}
 }
+
+// TestUnitsOfDerivatives: with G = c = M = 1 written out, an amplitude r h/mu
+// has no unit, a frequency 1/M, and each derivative in u takes another 1/M.
+func TestUnitsOfDerivatives(t *testing.T) {
+	for key, want := range map[string]string{
+		"amplitude": "1", "amplitude_slope": "1/M", "amplitude_curvature": "1/M²",
+		"frequency": "1/M", "frequency_slope": "1/M²", "omega_phi": "1/M",
+		"rstar": "M", "period_r": "M", "inclination": "degrees",
+	} {
+		if got := unitOf(key); got != want {
+			t.Errorf("%s has the unit %q, want %q", key, got, want)
+		}
+	}
+}

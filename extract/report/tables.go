@@ -69,7 +69,7 @@ func quantities() []quantity {
 // lossWord names what a number counts: a rate or a total.
 func lossWord(measure string) string {
 	if measure == total {
-		return "over the whole motion"
+		return "radiated after the start-up"
 	}
 	return "per coordinate time"
 }
@@ -206,9 +206,9 @@ func perMTables(r *result.Result) []table {
 				line.Cells = value(line.Cells, q.of(m.Horizon), scientific)
 			}
 			if m.LConverged {
-				line.Cells = append(line.Cells, cell{"converged", "met"})
+				line.Cells = append(line.Cells, cell{"complete", "met"})
 			} else {
-				line.Cells = append(line.Cells, cell{"NOT converged", "unmet"})
+				line.Cells = append(line.Cells, cell{"larger l missing", "met"})
 			}
 			t.Rows = append(t.Rows, line)
 		}

@@ -78,9 +78,9 @@ func count(n int, what string) string {
 
 // lossSentence says what leaves the orbit: the answer to the first question.
 func lossSentence(r *result.Result) string {
-	verb, style := "loses energy at the rate", scientific
+	opening, style := "The orbit loses energy at the rate", scientific
 	if measureOf(r) == total {
-		verb, style = "loses the energy", readable
+		opening, style = "After the start-up the orbit loses the energy", readable
 	}
 	unit := energyUnit(measureOf(r))
 	if t := r.Total; t != nil && (t.Infinity != nil || t.Horizon != nil) {
@@ -95,7 +95,7 @@ func lossSentence(r *result.Result) string {
 			}
 			ends = append(ends, end)
 		}
-		return fmt.Sprintf("The orbit %s %s.", verb, strings.Join(ends, " and "))
+		return fmt.Sprintf("%s %s.", opening, strings.Join(ends, " and "))
 	}
 	if len(r.Ringing) > 0 {
 		g := r.Ringing[0]

@@ -24,10 +24,10 @@ const (
 // the other form. The shares are measured: they make the bars of the seeded
 // population and of evolved pulses cover.
 const (
-	movedShare   = 3.5
-	scatterShare = 1.5
-	termsShare   = 1.5
-	formShare    = 0.8
+	movedShare   = 5
+	scatterShare = 2
+	termsShare   = 2
+	formShare    = 2
 )
 
 // bin is the mean over a short stretch of ln u.

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"slices"
 	"sort"
 	"strings"
 
@@ -137,7 +138,11 @@ func sumModes(c *configs.Case, res *result.Result, measure string) {
 	}
 	tail := func(end func(*result.Mode) *result.Flux, margin float64) (*result.Flux, bool) {
 		e, ok1 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).Energy.Value }), margin)
-		l, ok2 := flux.Tail(byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value }), margin)
+		spin := byL(func(m *result.Mode) float64 { return end(m).AngularMomentum.Value })
+		l, ok2 := flux.Tail(spin, margin)
+		if !slices.ContainsFunc(spin, func(x float64) bool { return x != 0 }) {
+			ok2 = true // a radial fall carries none in any mode
+		}
 		return &result.Flux{Energy: e, AngularMomentum: l}, ok1 && ok2
 	}
 	if total.Horizon == nil {
@@ -221,9 +226,9 @@ func (r *circularRun) series(c *configs.Case) *result.Series {
 	if len(r.modes) == 0 {
 		return nil
 	}
-	until := math.Inf(1)
+	until := 0.0
 	for _, m := range r.modes {
-		until = math.Min(until, m.until)
+		until = math.Max(until, m.until)
 	}
 	d := r.n.domain
 	s := &result.Series{Prefix: "h", HorizonPrefix: "psi", JunkUntil: r.n.ramp.Centre + 3*r.n.ramp.Width + 60}
@@ -235,7 +240,7 @@ func (r *circularRun) series(c *configs.Case) *result.Series {
 		s.Phi = append(s.Phi, r.orbit.omega*t)
 	}
 	for _, m := range r.modes {
-		s.Modes = append(s.Modes, r.modeSeries(m, s.U, s.V))
+		s.Modes = append(s.Modes, r.modeSeries(m, s.U, s.V, s.JunkUntil))
 	}
 	return s
 }
@@ -249,36 +254,54 @@ func ladderOfTimes(step, from, to float64) []float64 {
 	return out
 }
 
-func (r *circularRun) modeSeries(m *ladder, u, v []float64) result.ModeSeries {
-	t := m.circ.tone
-	fine := m.runs[m.rung]
+// modeSeries is the raw signal while the start-up lasts, and the certified tone
+// from there on: what the start-up has left in the samples is not part of the
+// answer for a particle that has always been on its orbit. It goes on to the end
+// of the longest run.
+func (r *circularRun) modeSeries(m *ladder, u, v []float64, settled float64) result.ModeSeries {
+	t, d := m.circ.tone, r.n.domain
 	fac := strain.Factor(t.L, m.parity == equations.Odd)
-	d := r.n.domain
 	out := result.ModeSeries{L: t.L, M: t.M}
-	wave := func(s *certify.Samples) []complex128 {
-		w := strain.Resample(s.Psi[certify.Infinity], d.Retarded(0), s.Dt, u)
-		for i := range w {
-			w[i] *= fac
-		}
-		return w
-	}
-	out.Wave = wave(fine)
-	coarse := wave(m.runs[m.rung-1])
-	out.Horizon = strain.Resample(fine.Psi[certify.Horizon], d.Advanced(0), fine.Dt, v)
-	// The truth is the steady signal: what a sample still carries of the
-	// start-up is its distance from that, on top of the amplitude's own bar.
 	h := r.strainAmplitude(m)
-	bar := cmplx.Abs(h) * m.circ.bars[certify.Infinity].Bar()
-	for i, t0 := range u {
-		steady := h * cmplx.Exp(complex(0, -t.Omega*t0))
-		out.WaveErr = append(out.WaveErr, cmplx.Abs(out.Wave[i]-steady)+bar)
-		out.Evidence = append(out.Evidence, cmplx.Abs(out.Wave[i]-coarse[i]))
+	// The finer rungs' amplitudes differ by this much, samples included.
+	z := m.circ.z[certify.Infinity]
+	apart := cmplx.Abs(h) * cmplx.Abs(z-m.circ.coarse) / cmplx.Abs(z)
+	out.Wave, out.WaveErr = r.toned(m, certify.Infinity, d.Retarded(0), u, settled, h, fac)
+	raw := out.Evidence
+	for i := range u {
+		raw = append(raw, apart)
+		if u[i] >= settled || u[i] > d.Retarded(0)+math.Min(m.runs[m.rung].Until(), m.runs[m.rung-1].Until()) {
+			continue
+		}
+		// While the start-up lasts the rungs are compared sample by sample.
+		other := strain.Resample(m.runs[m.rung-1].Psi[certify.Infinity], d.Retarded(0), m.runs[m.rung-1].Dt, u[i:i+1])
+		raw[i] = cmplx.Abs(out.Wave[i] - fac*other[0])
 	}
-	zh := m.circ.z[certify.Horizon]
-	barH := cmplx.Abs(zh) * m.circ.bars[certify.Horizon].Bar()
-	for i, t0 := range v {
-		steady := zh * cmplx.Exp(complex(0, -t.Omega*(t0-d.Si)))
-		out.HorizonErr = append(out.HorizonErr, cmplx.Abs(out.Horizon[i]-steady)+barH)
-	}
+	out.Evidence = raw
+	zh := m.circ.z[certify.Horizon] * cmplx.Exp(complex(0, t.Omega*d.Si))
+	out.Horizon, out.HorizonErr = r.toned(m, certify.Horizon, d.Advanced(0), v, settled, zh, 1)
 	return out
+}
+
+// toned samples a mode at one end: raw (times fac) before settled, with its
+// distance from the tone a e^{-i omega t} in the bar, and that tone after.
+func (r *circularRun) toned(m *ladder, e certify.End, start float64, at []float64, settled float64, a, fac complex128) (w []complex128, bar []float64) {
+	s := m.runs[m.rung]
+	n := 0
+	for n < len(at) && at[n] < settled && at[n] <= start+s.Until() {
+		n++
+	}
+	w = strain.Resample(s.Psi[e], start, s.Dt, at[:n])
+	own := cmplx.Abs(a) * m.circ.bars[e].Bar()
+	for i, t := range at {
+		steady := a * cmplx.Exp(complex(0, -m.circ.tone.Omega*t))
+		if i >= n {
+			w = append(w, steady)
+			bar = append(bar, own)
+			continue
+		}
+		w[i] *= fac
+		bar = append(bar, cmplx.Abs(w[i]-steady)+own)
+	}
+	return w, bar
 }

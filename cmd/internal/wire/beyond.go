@@ -170,7 +170,7 @@ func (j junkSeries) density(e certify.End, tau, stretch float64) float64 {
 // rangeWords says which part of the motion the totals hold.
 func (r *burstRun) rangeWords() string {
 	u0, u1 := r.after, r.n.domain.Retarded(r.ends)-1
-	s := fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", u0, u1)
+	s := fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", u0+r.origin, u1+r.origin)
 	switch {
 	case r.open[0] && r.open[1]:
 		return s + "; what the particle radiates at infinity before and after, far away, is estimated from the fall of the flux at both ends, included, and has a bar"

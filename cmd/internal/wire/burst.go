@@ -37,6 +37,8 @@ type burstRun struct {
 	open    [2]bool // the particle comes from, and goes to, infinity
 	starts  map[*ladder]junkSeries
 	largest float64 // radiated energy of the strongest mode, per both signs
+	turning bool    // goes round many times before the event
+	table   *tablePath
 }
 
 // burstPath makes the worldline of a transient case.
@@ -59,6 +61,9 @@ func burstPathOf(c *configs.Case, through worldline.Continuation) (worldline.Wor
 			return nil, err
 		}
 		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive, Continue: through})
+	}
+	if o.Kind == configs.Table {
+		return newTablePath(o)
 	}
 	return nil, fmt.Errorf("orbit.kind %s is not a transient", o.Kind)
 }
@@ -83,12 +88,24 @@ func burstRamp(event float64) source.Ramp {
 
 // eventTime is when a transient orbit does what it is run for.
 func eventTime(w worldline.Worldline) float64 {
+	th := horizonTime(w)
 	for _, m := range w.Markers() {
-		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron {
+		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron && math.IsInf(th, 1) {
 			return m.T
 		}
 	}
-	return horizonTime(w) - 30
+	if _, t1 := w.Span(); math.IsInf(th, 1) {
+		return t1 / 2 // a table that only leaves
+	}
+	return th - 30
+}
+
+// turnsBefore is how often a path goes round before time t.
+func turnsBefore(w worldline.Worldline, t float64) float64 {
+	var a, b worldline.State
+	w.At(0, &a)
+	w.At(t, &b)
+	return math.Abs(b.Phi-a.Phi) / (2 * math.Pi)
 }
 
 func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
@@ -98,11 +115,19 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 	}
 	r := &burstRun{climb: newClimb(n, o), path: w, asked: c.Accuracy.Relative}
 	r.kind = r
+	r.turning = w.Kind() == configs.Inspiral
+	if t, ok := w.(*tablePath); ok {
+		r.table, r.origin = t, t.origin
+		if r.n.until > 0 {
+			r.n.until -= t.origin
+		}
+	}
 	r.open[0], r.open[1] = openEnds(c)
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
 	r.event = eventTime(w)
+	r.turning = r.turning || r.table != nil && r.table.plunges() && turnsBefore(w, r.event) > 3
 	r.n.ramp = burstRamp(r.event)
 	r.n.filter, r.n.filterStrength = 16, 0.5
 	r.n.courant = math.Min(r.n.courant, 1.1)
@@ -119,6 +144,9 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 	switch {
 	case r.n.until > 0:
 		r.ends = r.n.until + r.n.domain.So
+		if r.table != nil && !r.falls {
+			r.ends = math.Min(r.ends, lastSlice(w, &r.n, r.table.last))
+		}
 	case r.falls:
 		// r_* = -30 is passed about 33 M after the light ring; the ringdown is
 		// followed for 150 M.
@@ -127,9 +155,7 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 		// The source stops at the end of the path: what that sends out arrives
 		// later than anything that is used.
 		_, t1 := w.Span()
-		var s worldline.State
-		w.At(t1, &s)
-		r.ends = t1 - s.Rstar - source.NewKernel(r.n.widest, r.n.moments).Reach() + r.n.domain.So
+		r.ends = lastSlice(w, &r.n, t1)
 	}
 	var start worldline.State
 	w.At(0, &start)
@@ -205,6 +231,15 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err != nil {
 		return nil, err
 	}
+	if r.table != nil && r.table.hasOwn() {
+		d, err := r.choice(ctx, r.table, r.ends, func(s *certify.Samples, m *ladder) float64 {
+			return certify.Integrate(s, certify.Infinity, r.after+r.n.domain.So, r.ends-1, 0.25).Power * flux.Norm(m.l)
+		})
+		if err != nil {
+			return nil, err
+		}
+		tellChoice(c, b.Result, d)
+	}
 	b.Result.Provenance = clock.stop(o.Workers)
 	return b, nil
 }
@@ -233,6 +268,15 @@ func (r *burstRun) quietAt() float64 {
 			after += 2
 		}
 	}
+	if r.turning {
+		// An inspiral has time: its strain counts from here on as well.
+		for _, m := range r.modes {
+			j := r.starts[m]
+			for after < last-200 && j.at(0, after+r.n.domain.So) > r.asked/5*j.peak[0] {
+				after += 2
+			}
+		}
+	}
 	return math.Min(after, last)
 }
 
@@ -253,7 +297,7 @@ func (r *burstRun) quiet(*certify.Samples, *ladder, float64, int) bool { return 
 // transients from shortly before their event (the residue of the start-up has a
 // bar at every sample in any case).
 func (r *burstRun) strainFrom() float64 {
-	if r.path.Kind() == configs.Inspiral {
+	if r.turning {
 		return r.after
 	}
 	var s worldline.State
@@ -386,7 +430,12 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
 		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
 	}
+	if r.table != nil {
+		r.shiftMarkers(res.Orbit)
+		res.Warnings = append(res.Warnings, r.table.notes()...)
+	}
 	delete(res.Conventions, "circular strain")
+	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
 	res.Conventions["totals"] = r.rangeWords()
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its energy counts once"
@@ -404,7 +453,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)
 	if s != nil {
-		s.JunkUntil = r.after
+		s.JunkUntil = r.after + r.origin
 	}
 	return &result.Bundle{Result: res, Series: s, Spectrum: r.spectrumOf(res)}, nil
 }
@@ -445,31 +494,44 @@ func (r *climb) seriesOf(c *configs.Case, path worldline.Worldline, junk map[*la
 	}
 	d := r.n.domain
 	s := &result.Series{Prefix: "h", HorizonPrefix: "psi"}
-	s.U = ladderOfTimes(c.Output.Every, 0, d.Retarded(until))
-	s.V = ladderOfTimes(c.Output.Every, math.Ceil(d.Advanced(0)), d.Advanced(until))
+	s.U = ladderOfTimes(c.Output.Every, r.origin, r.origin+d.Retarded(until))
+	s.V = ladderOfTimes(c.Output.Every, math.Ceil(r.origin+d.Advanced(0)), r.origin+d.Advanced(until))
+	atU, atV := since(s.U, r.origin), since(s.V, r.origin)
 	t0, t1 := path.Span()
 	var st worldline.State
-	for _, t := range s.U {
+	for i, t := range atU {
 		if t >= t0 && t <= t1 {
 			path.At(t, &st)
 			if st.Rstar < worldline.HorizonApproach {
 				break
 			}
-			s.T, s.R, s.Phi = append(s.T, t), append(s.R, st.R), append(s.Phi, st.Phi)
+			s.T, s.R, s.Phi = append(s.T, s.U[i]), append(s.R, st.R), append(s.Phi, st.Phi)
 		}
 	}
 	for _, m := range r.modes {
 		out := result.ModeSeries{L: m.l, M: m.m}
-		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), s.U, c.Output.Every, junk[m], dphi)
-		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), s.V, c.Output.Every, junk[m], dphi)
+		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), atU, c.Output.Every, junk[m], dphi)
+		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), atV, c.Output.Every, junk[m], dphi)
 		s.Modes = append(s.Modes, out)
 	}
 	return s
 }
 
+// since is the times counted from origin.
+func since(times []float64, origin float64) []float64 {
+	if origin == 0 {
+		return times
+	}
+	out := make([]float64, len(times))
+	for i, t := range times {
+		out[i] = t - origin
+	}
+	return out
+}
+
 // checkBurst passes on what the worldline refuses.
 func checkBurst(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch c.Orbit.Kind {

@@ -72,6 +72,7 @@ func (r *burstRun) peaks(res *result.Result) {
 				p.AtLightRing = q
 			}
 		}
+		p.U.Value += r.origin
 		entry.Peak = p
 	}
 }
@@ -94,10 +95,10 @@ func (r *burstRun) rates(at []float64, back int) []recoil.Mode {
 	return out
 }
 
-// turning says whether the orbit turns slowly, almost on a circle, where the
+// circles says whether the orbit turns slowly, almost on a circle, where the
 // counted range begins: an inspiral, or a bound particle with angular momentum
 // that starts its plunge.
-func (r *burstRun) turning() bool {
+func (r *burstRun) circles() bool {
 	var s worldline.State
 	r.path.At(0, &s)
 	return r.falls && s.L != 0 && s.E < 1
@@ -120,7 +121,7 @@ func (r *burstRun) kick(res *result.Result) {
 		return
 	}
 	k, err := recoil.Kick(fine, recoil.Options{
-		From: at[0], To: at[len(at)-1], Turning: r.turning(),
+		From: at[0], To: at[len(at)-1], Turning: r.turning || r.circles(),
 		Coarse: mid, Factor: certify.Leftover(min(r.n.order, r.n.moments)),
 	})
 	if err == nil {

@@ -38,7 +38,9 @@ type circularMode struct {
 	power int        // of the demodulation window
 	scout [2]float64 // |amplitude| of the scouting run by end
 	z     [2]complex128
-	bars  [2]certify.Budget
+	// coarse is the amplitude at infinity on the second finest rung
+	coarse complex128
+	bars   [2]certify.Budget
 }
 
 func (o circularOrbit) mode(l, m int, on float64) *circularMode {
@@ -229,6 +231,9 @@ func (r *circularRun) certify(m *ladder) (climb bool, err error) {
 			}
 			if k == m.rung {
 				fine = rd
+			}
+			if k == m.rung-1 && end == certify.Infinity {
+				m.circ.coarse = rd.Z
 			}
 			z = append(z, rd.Z)
 		}

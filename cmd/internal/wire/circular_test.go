@@ -175,6 +175,8 @@ func TestBarsAreCalibrated(t *testing.T) {
 					err := math.Abs(q.Value - truth)
 					if err <= q.Error+4e-15*math.Abs(truth) { // digits of the table
 						in++
+					} else {
+						t.Logf("outside: asked %s, r0 = %g (%d,%d): off by %.1e, bar %.1e (relative), budget %v", asked, ref.R0, want.L, want.M, err/math.Abs(truth), q.Error/math.Abs(truth), got.Budget)
 					}
 					ratios = append(ratios, q.Error/math.Max(err, 1e-300))
 					return err

@@ -330,7 +330,7 @@ func TestCalibrationOfTails(t *testing.T) {
 	if covered < 0.95 || mid > 10 {
 		t.Errorf("covered %.3f, median bar/error %.1f; want 0.95 and at most 10", covered, mid)
 	}
-	if worst > 0.02 {
+	if worst > 0.01 {
 		t.Errorf("an exponent of l <= 2 is off by %.3f", worst)
 	}
 }

@@ -59,11 +59,11 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable, checkKerr}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch r := c.Orbit.Radius; {
@@ -79,7 +79,7 @@ func checkCircular(c *configs.Case) []configs.Problem {
 
 // checkEccentric passes on what the worldline refuses.
 func checkEccentric(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	if _, err := newEccentric(c.Orbit); err != nil {
@@ -115,7 +115,9 @@ func refusal(err error) []configs.Problem {
 // Warnings returns what a user should know about a valid case, a sentence each.
 func Warnings(c *configs.Case) []string {
 	var w []string
-	if c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Hole.Spin == 0 {
+	if c.Waves.Equation == configs.Teukolsky {
+		w = kerrWarnings(c)
+	} else if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
 		if r := c.Orbit.Radius; r < hyperboloidal.ISCORadius {
 			w = append(w, fmt.Sprintf("the circular orbit at r = %g lies inside the innermost stable one (r = 6): it is unstable, and the numbers hold for a particle kept on it", r))
 		}
@@ -140,12 +142,20 @@ func Warnings(c *configs.Case) []string {
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+		return runKerrCircular(ctx, c, o)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+		return runKerrBound(ctx, c, o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return runBound(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return runBurst(ctx, c, choose(c), o)
+	case c.Pulse != nil:
+		return runPulse(ctx, c, o)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return runTable(ctx, c, choose(c), o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
@@ -156,10 +166,20 @@ func transients() []string { return []string{configs.Infall, configs.Scatter, co
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+		return planKerrCircular(c)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+		return planKerrBound(c)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return planBound(c, choose(c))
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return planBurst(c, choose(c))
+	case c.Pulse != nil:
+		return planPulse(c)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return planTable(c, choose(c))
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return planBurst(c, choose(c))
 	}
@@ -178,6 +198,7 @@ func conventions() map[string]string {
 		"sign of flux":      "positive = leaving the orbit: outward at infinity, into the hole at the horizon",
 		"error bars":        "absolute; the truth is claimed inside value +- error",
 		"master functions":  "even: Zerilli-Moncrief, odd: Cunningham-Price-Moncrief; r h_lm = (1/2) sqrt((l+2)!/(l-2)!) (Psi_even + i Psi_odd)",
+		"circular series":   "before junk_until the raw signal of the evolution, from there on the certified tone, without what the switch-on left",
 		"circular strain":   "strain = r h_lm e^{i m phi_p(u)}/mu with phi_p(u) the particle's azimuth at time t = u",
 		"horizon series":    "psi_l_m is the master function on the horizon against advanced time v; dE/dv = (1/64 pi) (l+2)!/(l-2)! |d psi/dv|^2 for each sign of m",
 		"truncation":        "the total holds the listed modes plus the estimated tail beyond l_max, stated apart as truncation",
