@@ -14,6 +14,7 @@ const (
 	groupSlicing    = "slicing"
 	groupSource     = "source"
 	groupExtraction = "extraction"
+	groupOrbits     = "orbits"
 	groupBars       = "error bars"
 )
 
@@ -57,6 +58,7 @@ func Checks() []Check {
 	all = append(all, tailChecks()...)
 	all = append(all, sourceChecks()...)
 	all = append(all, extractionChecks()...)
+	all = append(all, orbitChecks()...)
 	all = append(all, barChecks()...)
 	all = append(all, pulseBarChecks()...)
 	return all

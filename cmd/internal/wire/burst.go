@@ -43,6 +43,12 @@ type burstRun struct {
 
 // burstPath makes the worldline of a transient case.
 func burstPath(c *configs.Case) (worldline.Worldline, error) {
+	return burstPathOf(c, worldline.FollowFrequency)
+}
+
+// burstPathOf is burstPath with the torque of an inspiral continued through the
+// plunge in one of the ways there are.
+func burstPathOf(c *configs.Case, through worldline.Continuation) (worldline.Worldline, error) {
 	o := c.Orbit
 	switch o.Kind {
 	case configs.Infall:
@@ -54,7 +60,7 @@ func burstPath(c *configs.Case) (worldline.Worldline, error) {
 		if err != nil {
 			return nil, err
 		}
-		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive})
+		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive, Continue: through})
 	}
 	if o.Kind == configs.Table {
 		return newTablePath(o)
@@ -103,7 +109,7 @@ func turnsBefore(w worldline.Worldline, t float64) float64 {
 }
 
 func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
-	w, err := burstPath(c)
+	w, err := burstPathOf(c, n.through)
 	if err != nil {
 		return nil, err
 	}
@@ -457,7 +463,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	if s != nil {
 		s.JunkUntil = r.after + r.origin
 	}
-	return &result.Bundle{Result: res, Series: s}, nil
+	return &result.Bundle{Result: res, Series: s, Spectrum: r.spectrumOf(res)}, nil
 }
 
 func (r *burstRun) entry(m *ladder, rung int) result.Mode {

@@ -79,17 +79,35 @@ func (r *burstRun) peaks(res *result.Result) {
 
 func abs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }
 
+// rates are the time derivatives of all modes' strains, from the finest rung but
+// back, with what the start-up may have left in them as bars.
+func (r *burstRun) rates(at []float64, back int) []recoil.Mode {
+	var out []recoil.Mode
+	for _, m := range r.modes {
+		s := r.seriesOn(m, m.rung-back, at, true)
+		s.Err = make([]float64, len(at))
+		fac := abs(strain.Factor(m.l, false))
+		for i, u := range at {
+			s.Err[i] = fac * math.Sqrt(math.Max(r.starts[m].density(certify.Infinity, u+r.n.domain.So, 10), 0))
+		}
+		out = append(out, recoil.Mode{L: m.l, M: m.m, Rate: s})
+	}
+	return out
+}
+
+// circles says whether the orbit turns slowly, almost on a circle, where the
+// counted range begins: an inspiral, or a bound particle with angular momentum
+// that starts its plunge.
+func (r *burstRun) circles() bool {
+	var s worldline.State
+	r.path.At(0, &s)
+	return r.falls && s.L != 0 && s.E < 1
+}
+
 // kick is the recoil from all neighbouring pairs of modes that were run.
 func (r *burstRun) kick(res *result.Result) {
 	at := r.times()
-	rates := func(back int) []recoil.Mode {
-		var out []recoil.Mode
-		for _, m := range r.modes {
-			s := r.seriesOn(m, m.rung-back, at, true)
-			out = append(out, recoil.Mode{L: m.l, M: m.m, Rate: s})
-		}
-		return out
-	}
+	rates := func(back int) []recoil.Mode { return r.rates(at, back) }
 	lMax := 0
 	for _, m := range r.modes {
 		lMax = max(lMax, m.l)
@@ -103,7 +121,7 @@ func (r *burstRun) kick(res *result.Result) {
 		return
 	}
 	k, err := recoil.Kick(fine, recoil.Options{
-		From: at[0], To: at[len(at)-1], Turning: r.turning,
+		From: at[0], To: at[len(at)-1], Turning: r.turning || r.circles(),
 		Coarse: mid, Factor: certify.Leftover(min(r.n.order, r.n.moments)),
 	})
 	if err == nil {

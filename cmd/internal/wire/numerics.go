@@ -8,6 +8,7 @@ import (
 	"nullmark/grid"
 	"nullmark/hyperboloidal"
 	"nullmark/source"
+	"nullmark/source/worldline"
 )
 
 // numerics is every choice of the scheme; tests vary what case files cannot.
@@ -33,6 +34,7 @@ type numerics struct {
 	widest         float64 // kernel width that the flat part makes room for, M
 	domain         hyperboloidal.Layers
 	coarsestDx     float64
+	through        worldline.Continuation // of an inspiral's torque through the plunge
 }
 
 // choose gives the numerics of a case: measured defaults, overridden by what
