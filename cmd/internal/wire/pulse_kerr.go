@@ -24,7 +24,8 @@ const (
 	coupledTaylor    = 8
 	coupledSteepness = 2.0
 	// The field of spin weight +2 grows from round-off at a deep inner end.
-	absorbingInner = 13.0
+	absorbingInner = 6.5
+	absorbingStart = 3.0
 	fastestPulse   = 0.95 // largest |a|
 	// Nanoseconds per point, l and stage of the coupled evolution.
 	nsPerCoupledPoint = 25.0
@@ -51,6 +52,7 @@ func (s *pulseScheme) couple(c *configs.Case) error {
 		return err
 	}
 	if c.Waves.SpinWeight > 0 {
+		s.domain.Ri = math.Min(s.pulse.Centre-s.pulse.Reach(), absorbingStart)
 		s.domain.Si = s.domain.Ri - absorbingInner
 	}
 	s.taylor = coupledTaylor
