@@ -198,14 +198,15 @@ func pulseBarChecks() []Check {
 				for _, g := range res.Ringing {
 					for _, t := range gravitational() {
 						if t.l == g.L && t.n == g.N {
-							ratios = append(ratios, (g.Re.Error+leaverDigits)/math.Max(math.Abs(g.Re.Value-t.re), 1e-18),
-								(g.Im.Error+leaverDigits)/math.Max(math.Abs(g.Im.Value-t.im), 1e-18))
+							// the worse of the two parts
+							ratios = append(ratios, math.Min((g.Re.Error+leaverDigits)/math.Max(math.Abs(g.Re.Value-t.re), 1e-18),
+								(g.Im.Error+leaverDigits)/math.Max(math.Abs(g.Im.Value-t.im), 1e-18)))
 						}
 					}
 				}
 			}
-			if len(ratios) < 4*len(r) {
-				return result.Q{}, fmt.Errorf("only %d parts of frequencies in %d results", len(ratios), len(r))
+			if len(ratios) < 2*len(r) {
+				return result.Q{}, fmt.Errorf("only %d frequencies in %d results", len(ratios), len(r))
 			}
 			slices.Sort(ratios)
 			return result.Q{Value: statistic(ratios)}, nil
