@@ -94,7 +94,7 @@ func Rules() []Rule {
 			"equations/evolve", // its failure alone, which has an exit code
 			"cmd/internal/wire", "cmd/internal/verify"},
 			Outside: []string{commandLine, commandFlags, bar, terminal}, Machine: true},
-		{Package: "examples/faultymodel", Inside: []string{"extract/result", "extract/compare", "extract/store"}, Machine: true},
+		{Package: "cmd/faultymodel", Inside: []string{"extract/result", "extract/compare", "extract/store"}, Machine: true},
 		{Package: "cmd/nullmark", Inside: []string{"cmd/internal/app", "cmd/internal/wire"}, Machine: true},
 	}
 }

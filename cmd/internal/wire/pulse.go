@@ -453,7 +453,7 @@ func localIndex(l, m int, where string, f *tail.Fit) result.LocalIndex {
 // pulseConventions are what a pulse's result states.
 func pulseConventions() map[string]string {
 	c := conventions()
-	for _, k := range []string{"strain", "negative m", "sign of flux", "circular strain", "horizon series", "truncation", "orbital frequency"} {
+	for _, k := range []string{"strain", "negative m", "sign of flux", "circular strain", "circular series", "horizon series", "truncation", "orbital frequency"} {
 		delete(c, k)
 	}
 	c["units"] = "G = c = M = 1 (M the hole's mass); the pulse has height 1"

@@ -3,7 +3,7 @@
 // real model.
 //
 //	nullmark run case.yaml --out results/case
-//	go run ./examples/faultymodel results/case invented
+//	go run ./cmd/faultymodel results/case invented
 //	nullmark compare results/case --model invented/model.yaml
 //
 // It takes the waveform of a result, spoils it as listed below and writes it
@@ -78,7 +78,7 @@ func write(from, to string) error {
 	if err := os.MkdirAll(to, 0o777); err != nil {
 		return err
 	}
-	yaml := "# An invented model with known faults, written by examples/faultymodel.\nmodel:\n  name: invented model with faults\n" +
+	yaml := "# An invented model with known faults, written by cmd/faultymodel.\nmodel:\n  name: invented model with faults\n" +
 		"  quantity: master\n  phase: plus\n"
 	waveform, names, err := waveform(b.Series, compare.Convention{Quantity: "master", Phase: "plus"}, fault)
 	if err != nil {
@@ -121,7 +121,7 @@ func writeRight(from, to string) error {
 				if err != nil {
 					return err
 				}
-				yaml := fmt.Sprintf("# An invented model without faults, written by examples/faultymodel.\nmodel:\n  name: %s\n  quantity: %s\n  phase: %s\n  phase_of: %s\n"+
+				yaml := fmt.Sprintf("# An invented model without faults, written by cmd/faultymodel.\nmodel:\n  name: %s\n  quantity: %s\n  phase: %s\n  phase_of: %s\n"+
 					"  waveform:\n    file: %s.csv\n    time: u\n    modes: {%s}\n", name, quantity, phase, of, name, strings.Join(names, ", "))
 				for file, data := range map[string]string{name + ".csv": text, name + ".yaml": yaml} {
 					if err := os.WriteFile(filepath.Join(to, file), []byte(data), 0o666); err != nil {
