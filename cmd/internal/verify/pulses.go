@@ -135,7 +135,7 @@ func ringingChecks() []Check {
 		}
 	}
 	for _, t := range spinning() {
-		c := Case{"ringing_kerr.yaml", []string{fmt.Sprintf("hole.spin=%v", t.a)}}
+		c := Case{"kerr-ringing.yaml", []string{fmt.Sprintf("hole.spin=%v", t.a)}}
 		for _, where := range []string{"infinity", "horizon"} {
 			all = append(all, toneRows(groupEquation, fmt.Sprintf("a = %v ", t.a), tone{t.l, 0, t.re, t.im}, t.m, where, spinningSource(), 5e-11, true, c)...)
 		}

@@ -29,7 +29,7 @@ func shippedPulse(t *testing.T, name string, changes ...string) *configs.Case {
 // TestShippedPulses runs the shipped cases of pulses in a short form, through the
 // same doors as the commands.
 func TestShippedPulses(t *testing.T) {
-	shippedPulse(t, "ringing_kerr.yaml")
+	shippedPulse(t, "kerr-ringing.yaml")
 	b, err := Run(context.Background(), shippedPulse(t, "ringing.yaml", "waves.modes=[[2,2]]", "accuracy.relative=1e-8", "pulse.width=2", "pulse.shape=compact"), Options{Workers: 2})
 	if err != nil {
 		t.Fatal(err)
