@@ -182,7 +182,7 @@ func pulses() []Case {
 		for _, centre := range []float64{4, 7, 11, 16, 23} {
 			for _, width := range []float64{1, 1.7, 2.6, 3.7} {
 				all = append(all, ringing("pulse.moving="+moving, fmt.Sprintf("pulse.centre=%v", centre), fmt.Sprintf("pulse.width=%v", width),
-					"waves.modes=[[2,2],[3,3],[4,4]]"))
+					"waves.modes=[[2,2],[3,3],[4,4]]", "accuracy.relative=1e-9"))
 			}
 		}
 	}
