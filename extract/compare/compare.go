@@ -91,7 +91,10 @@ func Compare(in Input) (*result.Comparison, *result.Curves, error) {
 		c.Warnings = append(c.Warnings, "The reference's totals hold only the modes that were run, without an estimate of the others: a model's total flux or loss will lie above them.")
 	}
 	if in.Numbers != nil {
-		c.Numbers = numbers(in.Numbers, in.Reference.Result)
+		var apart bool
+		if c.Numbers, apart = numbers(in.Numbers, in.Reference.Result); apart {
+			c.Warnings = append(c.Warnings, "The radiated totals of the two results cover different stretches of u and are not set against each other; the waveforms are.")
+		}
 	}
 	return c, curves, nil
 }
@@ -326,15 +329,15 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 	return p, nil
 }
 
-// marks are the marked times of a mode inside the compared range; peak is the
+// marks are the marked times of a mode, those of the orbit at u = t; peak is the
 // u of the reference's peak, NaN without one.
 func (w *waves) marks(peak float64) []marker {
 	out := []marker{{"start", w.u[0]}}
 	if o := w.in.Reference.Result.Orbit; o != nil {
 		for _, name := range sortedKeys(o.Markers) {
-			if u, ok := w.ret.at(o.Markers[name]); ok {
-				out = append(out, marker{name, u})
-			}
+			// The orbit's times are times t of the particle; as for all labels on
+			// waves, u = t stands for them.
+			out = append(out, marker{name, o.Markers[name]})
 		}
 	}
 	if !math.IsNaN(peak) {
@@ -353,9 +356,7 @@ func (w *waves) stages(peak float64) []stage {
 	isco, ring := math.Inf(-1), false
 	if o := w.in.Reference.Result.Orbit; o != nil {
 		if t, ok := o.Markers["isco"]; ok {
-			if u, ok := w.ret.at(t); ok {
-				isco = u
-			}
+			isco = t
 		}
 		_, ring = o.Markers["light_ring"]
 	}

@@ -339,6 +339,22 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 	return climb, nil
 }
 
+// slowest is the most that a difference of two rungs is multiplied with in a bar
+// of a sample: where differences do not shrink from rung to rung, what is left
+// is of their own size.
+const slowest = 4.0
+
+// unsettled is what remains, in units of the last difference, where differences
+// between rungs fall from before to last like a geometric series.
+func unsettled(last, before []float64) []float64 {
+	out := make([]float64, len(last))
+	for i := range out {
+		q := last[i] / math.Max(before[i], 1e-300)
+		out[i] = math.Min(q/math.Max(1-q, 1e-3), slowest)
+	}
+	return out
+}
+
 // sampled resamples the field of a mode at one end with a bar per sample: what
 // the two finest rungs leave open, what the start-up has left, round-off, and
 // the worldline's own error. At infinity the field is the strain.
@@ -359,10 +375,19 @@ func (r *climb) sampledWith(m *ladder, e certify.End, start float64, at []float6
 	}
 	left := certify.Leftover(min(r.n.order, r.n.moments))
 	round := certify.RoundOff(m.points[m.rung], 1)
-	near := runningMax(diff, int(math.Ceil(12/step)))
+	reach := int(math.Ceil(12 / step))
+	near := runningMax(diff, reach)
 	bar = make([]float64, len(w))
+	slow := make([]float64, len(w))
+	if coarse := m.runs[m.rung-2]; coarse != nil && coarse.Until() >= at[len(at)-1]-start {
+		before := strain.Resample(coarse.Psi[e], start, coarse.Dt, at)
+		for i := range before {
+			slow[i] = cmplx.Abs(fac * (o[i] - before[i]))
+		}
+		slow = unsettled(near, runningMax(slow, reach))
+	}
 	for i := range w {
-		bar[i] = left*near[i] + cmplx.Abs(fac)*junk.at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
+		bar[i] = math.Max(left, slow[i])*near[i] + cmplx.Abs(fac)*junk.at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
 	}
 	return w, bar, diff
 }
