@@ -43,7 +43,7 @@ func (r *burstRun) peaks(res *result.Result) {
 		return
 	}
 	at := r.times()
-	left := certify.Leftover(min(r.n.order, r.n.moments))
+	left := certify.Leftover(min(r.n.order, r.n.moments, resampled))
 	markers := map[string]float64{}
 	for _, k := range r.path.Markers() {
 		markers[k.Name] = k.T
