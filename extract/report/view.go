@@ -199,6 +199,8 @@ func pictures(b *result.Bundle) []picture {
 		}
 		add(amplitudePicture(s))
 	}
+	add(ringingPicture(r, s))
+	add(decayPicture(r, s))
 	add(fluxPicture(r))
 	add(budgetPicture(r))
 	add(evidencePicture(s))

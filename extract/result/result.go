@@ -198,6 +198,19 @@ type ModeSeries struct {
 	// Evidence is |difference of Wave between the two finest rungs|, the
 	// picture of convergence (nil where it was not kept).
 	Evidence []float64
+	// Tones is the sum of the fitted damped oscillations of a pulse, sampled
+	// like Wave, NaN before the fit begins; nil where none was fitted.
+	Tones []complex128
+}
+
+// LocalIndex is -d ln|psi|/d ln t of a pulse's decay at one place against the
+// time that belongs there (see Tail), with a bar at each time.
+type LocalIndex struct {
+	L, M  int
+	Where string // as in Tail
+	Times []float64
+	Index []float64
+	Error []float64
 }
 
 // Series are the sampled outputs of a run: U retarded time at null infinity,
@@ -206,9 +219,10 @@ type Series struct {
 	Prefix        string // "h" (strain) or "psi" (pulses)
 	U, V          []float64
 	Modes         []ModeSeries
-	T, R, Phi     []float64 // the particle; nil for pulses
-	JunkUntil     float64   // samples with u below this still carry the start-up
-	HorizonPrefix string    // name prefix of the horizon field, e.g. "psi"
+	Decay         []LocalIndex // pulses with a tail
+	T, R, Phi     []float64    // the particle; nil for pulses
+	JunkUntil     float64      // samples with u below this still carry the start-up
+	HorizonPrefix string       // name prefix of the horizon field, e.g. "psi"
 }
 
 // Bundle is everything a run hands to storage and report.

@@ -66,6 +66,7 @@ type command struct {
 	quiet   bool
 	json    bool
 	long    bool
+	page    string
 }
 
 func (c *command) execute(ctx context.Context, args []string) int {

@@ -72,6 +72,7 @@ func (r *burstRun) peaks(res *result.Result) {
 				p.AtLightRing = q
 			}
 		}
+		p.U.Value += r.origin
 		entry.Peak = p
 	}
 }
@@ -124,7 +125,7 @@ func (r *burstRun) kick(res *result.Result) {
 		return
 	}
 	k, err := recoil.Kick(fine, recoil.Options{
-		From: at[0], To: at[len(at)-1], Turning: r.path.Kind() == "inspiral",
+		From: at[0], To: at[len(at)-1], Turning: r.turning,
 		Coarse: mid, Factor: certify.Leftover(min(r.n.order, r.n.moments)),
 	})
 	if err == nil {

@@ -59,6 +59,7 @@ type climb struct {
 	n       numerics
 	o       Options
 	meter   *meter
+	origin  float64 // coordinate time of the slice 0: worldlines here count from it, results do not
 	modes   []*ladder
 	rungs   map[int]*result.Rung
 	members map[int]map[string]bool

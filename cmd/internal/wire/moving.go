@@ -37,9 +37,10 @@ type boundRun struct {
 	path    worldline.Worldline
 	numbers map[string]float64
 	period  float64 // radial period
-	advance float64 // azimuth gained in it
-	turns   int     // whole orbits the window covers
 	power   int
+	table   *tablePath // of a tabulated orbit
+	cycle   cycle      // of a tabulated orbit
+	starts  map[*ladder]junkSeries
 	asked   float64
 	floor   float64
 	largest [2]float64
@@ -66,18 +67,22 @@ func newBoundRun(c *configs.Case, n numerics, o Options) (*boundRun, error) {
 	r := &boundRun{climb: newClimb(n, o), path: w, numbers: numbersOf(w), asked: c.Accuracy.Relative, floor: c.Accuracy.Floor}
 	r.kind = r
 	r.period = r.numbers["period_r"]
-	r.advance = r.numbers["omega_phi"] * r.period
 	r.power = min(certify.WindowPower(r.asked), 3)
 	r.n.placeBetween(hyperboloidal.TortoiseAt(r.numbers["r_min"]), hyperboloidal.TortoiseAt(r.numbers["r_max"]))
 	r.n.stopAt()
-	for _, lm := range c.ModeList() {
+	r.enter(c.ModeList())
+	return r, nil
+}
+
+// enter puts modes at the foot of the ladder.
+func (r *boundRun) enter(modes [][2]int) {
+	for _, lm := range modes {
 		m := newLadder(lm[0], lm[1])
 		m.mov = &movingMode{}
 		m.allow = [2]float64{r.asked, r.asked}
 		m.rung = r.startRung(m)
 		r.modes = append(r.modes, m)
 	}
-	return r, nil
 }
 
 // startRung predicts the rung as if the orbit were circular at its periastron,
@@ -103,6 +108,22 @@ func runBound(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err != nil {
 		return nil, err
 	}
+	return r.finish(ctx, c, clock)
+}
+
+// finish runs all modes and assembles the result.
+func (r *boundRun) finish(ctx context.Context, c *configs.Case, clock clock) (*result.Bundle, error) {
+	var err error
+	if r.table != nil {
+		// The end of the run is known, and how the start-up dies away helps to
+		// tell it from a slow change of the orbit.
+		for _, m := range r.modes {
+			m.until = r.n.until
+		}
+		if r.starts, err = r.junk(ctx); err != nil {
+			return nil, err
+		}
+	}
 	// The strongest modes first: they set the scale below which a mode need
 	// not be exact.
 	all := r.modes
@@ -119,15 +140,26 @@ func runBound(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err := r.run(ctx); err != nil {
 		return nil, err
 	}
-	junk, err := r.junk(ctx)
+	if r.table == nil {
+		if r.starts, err = r.junk(ctx); err != nil {
+			return nil, err
+		}
+	}
+	b, err := r.assemble(c, r.starts)
 	if err != nil {
 		return nil, err
 	}
-	b, err := r.assemble(c, junk)
-	if err != nil {
-		return nil, err
+	if r.table != nil && r.table.hasOwn() {
+		d, err := r.choice(ctx, r.table, r.n.until, func(s *certify.Samples, m *ladder) float64 {
+			e, _, _ := r.mean(s, m, certify.Infinity, r.n.until)
+			return e
+		})
+		if err != nil {
+			return nil, err
+		}
+		tellChoice(c, b.Result, d)
 	}
-	b.Result.Provenance = clock.stop(o.Workers)
+	b.Result.Provenance = clock.stop(r.o.Workers)
 	return b, nil
 }
 
@@ -262,6 +294,9 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 		if err != nil {
 			return false, err
 		}
+		if s, ok := r.starts[m]; ok {
+			te, ts = math.Min(te, s.moved[e]), math.Min(ts, s.moved[e])
+		}
 		round := 2 * certify.RoundOff(m.points[m.rung], math.Max(1, float64(m.m))*r.numbers["omega_phi"])
 		path := r.pathError(m)
 		edges := certify.WindowError(m.runs[m.rung], end, m.until, r.period, r.power)
@@ -310,7 +345,7 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 	out := make([]junkSeries, len(r.modes))
 	blocks := chunk(len(r.modes))
 	later := *r
-	later.n.ramp.Centre += 25
+	later.n.ramp.Centre += later.delay()
 	for _, b := range blocks {
 		for _, m := range r.modes[b[0]:b[1]] {
 			r.expect(0, m.until/blockModes*2)
@@ -339,6 +374,11 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		}
 		for q := range group {
 			s := junkSeries{dt: runs[0].Dt}
+			if k, ok := r.kind.(interface {
+				moved(m *ladder, a, b *certify.Samples) [2]float64
+			}); ok {
+				s.moved = k.moved(group[q], &runs[0].Samples[q], &runs[1].Samples[q])
+			}
 			for e := range s.psi {
 				a, b := runs[0].Samples[q].Psi[e], runs[1].Samples[q].Psi[e]
 				d := make([]float64, len(a))
@@ -378,6 +418,30 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 	return by, nil
 }
 
+// delay is how much later the second switch-on comes.
+func (r *climb) delay() float64 { return 25 }
+
+// moved bounds the relative change of a mode's averaged fluxes that is left of
+// the start-up, from what the later switch-on changes: a remainder that falls
+// like a power of the time since then is that change times the ratio of the two
+// times, or less.
+func (r *boundRun) moved(m *ladder, a, b *certify.Samples) (out [2]float64) {
+	since := math.Max((r.n.until-r.n.ramp.Centre)/r.delay(), 1)
+	for e := range out {
+		out[e] = math.Inf(1)
+		e0, s0, err0 := r.mean(a, m, certify.End(e), r.n.until)
+		e1, s1, err1 := r.mean(b, m, certify.End(e), r.n.until)
+		if r.table == nil || err0 != nil || err1 != nil {
+			continue
+		}
+		out[e] = since * math.Abs(e0-e1) / e0
+		if s0 != 0 {
+			out[e] = math.Max(out[e], since*math.Abs((s0-s1)/s0))
+		}
+	}
+	return out
+}
+
 // junkSeries is the falling envelope of what a later switch-on changes in Psi.
 type junkSeries struct {
 	dt   float64
@@ -385,6 +449,8 @@ type junkSeries struct {
 	rest [2][]float64 // integral of |difference of Psi_tau|^2 from each step on
 	peak [2]float64   // of |Psi| after the switch-on, on the coarsest rung
 	sent [2]float64   // integral of |Psi_tau|^2 after the switch-on
+
+	moved [2]float64 // what the start-up may change in an averaged flux, relative, of tables
 }
 
 // at is the envelope at slice tau.
@@ -418,12 +484,23 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	res := &result.Result{
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
-		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
+		Orbit: r.describe(), Warnings: append(append([]string{}, Warnings(c)...), r.notes()...),
 	}
 	delete(res.Conventions, "circular strain")
 	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
 	res.Conventions["averages"] = fmt.Sprintf("fluxes are averages per coordinate time over whole radial periods, window sin^%d over %d of them", 2*r.power, r.power+1)
+	if r.table != nil {
+		what := "radial periods"
+		if !r.cycle.radial {
+			what = "turns in azimuth"
+		}
+		length := float64(r.power+1) * r.period
+		d := r.n.domain
+		u, v := d.Retarded(r.n.until)+r.origin, d.Advanced(r.n.until)+r.origin
+		res.Conventions["averages"] = fmt.Sprintf("fluxes are averages per coordinate time over %d whole %s of %.8g M, window sin^%d, at infinity from u = %.8g to %.8g, at the horizon from v = %.8g to %.8g",
+			r.power+1, what, r.period, 2*r.power, u-length, u, v-length, v)
+	}
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its flux counts once"
 	index := r.rungList(res)
 	for _, m := range r.modes {
@@ -460,32 +537,6 @@ func (r *boundRun) entry(m *ladder, rung int) result.Mode {
 			"horizon discretisation": f[1].energyBar.Discretisation, "horizon transient": f[1].energyBar.Transient,
 		},
 	}
-}
-
-// describePath lists what a worldline says of itself.
-func describePath(w worldline.Worldline) *result.Orbit {
-	o := &result.Orbit{Kind: w.Kind(), Numbers: map[string]float64{
-		"horizon_radius": hyperboloidal.Horizon, "light_ring_radius": hyperboloidal.LightRing, "isco_radius": hyperboloidal.ISCORadius,
-	}}
-	for _, n := range w.Numbers() {
-		switch n.Name {
-		case "E":
-			o.Energy = n.Value
-		case "L":
-			o.AngMom = n.Value
-		default:
-			o.Numbers[n.Name] = n.Value
-		}
-	}
-	for _, k := range w.Markers() {
-		if o.Markers == nil {
-			o.Markers = map[string]float64{}
-		}
-		if _, there := o.Markers[k.Name]; !there {
-			o.Markers[k.Name] = k.T
-		}
-	}
-	return o
 }
 
 // runningMax is the largest value within reach of each sample.

@@ -14,6 +14,7 @@ import (
 	"nullmark/extract/pulse"
 	"nullmark/extract/result"
 	"nullmark/extract/ringing"
+	"nullmark/extract/tail"
 	"nullmark/grid"
 	"nullmark/hyperboloidal"
 	"nullmark/source"
@@ -67,7 +68,7 @@ func pulseProblems(c *configs.Case) []configs.Problem {
 
 // newPulseScheme makes the choices of a case.
 func newPulseScheme(c *configs.Case) *pulseScheme {
-	p := source.Pulse{Centre: c.Pulse.Centre, Width: c.Pulse.Width}
+	p := source.Pulse{Centre: c.Pulse.Centre, Width: c.Pulse.Width, Compact: c.Pulse.Shape == "compact"}
 	switch c.Pulse.Moving {
 	case "in":
 		p.Moving = source.Ingoing
@@ -336,6 +337,7 @@ func (r *pulseCase) assemble(found [][pulsePlaces]pulse.Outcome) (*result.Bundle
 				g := *o.Tail
 				g.L, g.M = e.l, e.m
 				res.Tail = append(res.Tail, g)
+				series.Decay = append(series.Decay, localIndex(e.l, e.m, r.where(p), o.Index))
 			}
 			if p != atRadius {
 				r.verdict(&res.Accuracy, o, e.l, e.m, r.where(p))
@@ -387,6 +389,9 @@ func (r *pulseCase) modeSeries(q, l, m int, found [pulsePlaces]pulse.Outcome) re
 	for k := 0; k < len(inf.Psi); k += r.s.stored {
 		out.Wave = append(out.Wave, inf.Psi[k])
 		out.WaveErr = append(out.WaveErr, found[atInfinity].Error[k])
+		if tones := found[atInfinity].Tones; tones != nil {
+			out.Tones = append(out.Tones, tones[k])
+		}
 		out.Horizon = append(out.Horizon, hor.Psi[k])
 		out.HorizonErr = append(out.HorizonErr, found[atHorizon].Error[k])
 		d := inf.Psi[k] - coarse.Psi[k]
@@ -395,10 +400,20 @@ func (r *pulseCase) modeSeries(q, l, m int, found [pulsePlaces]pulse.Outcome) re
 	return out
 }
 
+// localIndex lays out the local power index of a tail.
+func localIndex(l, m int, where string, f *tail.Fit) result.LocalIndex {
+	out := result.LocalIndex{L: l, M: m, Where: where, Times: f.Local.Times}
+	for _, q := range f.Local.Values {
+		out.Index = append(out.Index, q.Value)
+		out.Error = append(out.Error, q.Error)
+	}
+	return out
+}
+
 // pulseConventions are what a pulse's result states.
 func pulseConventions() map[string]string {
 	c := conventions()
-	for _, k := range []string{"strain", "negative m", "sign of flux", "circular strain", "horizon series", "truncation", "orbital frequency"} {
+	for _, k := range []string{"strain", "negative m", "sign of flux", "circular strain", "circular series", "horizon series", "truncation", "orbital frequency"} {
 		delete(c, k)
 	}
 	c["units"] = "G = c = M = 1 (M the hole's mass); the pulse has height 1"

@@ -7,6 +7,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"slices"
 
 	"nullmark/configs"
@@ -58,11 +59,11 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable, checkKerr}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch r := c.Orbit.Radius; {
@@ -78,11 +79,27 @@ func checkCircular(c *configs.Case) []configs.Problem {
 
 // checkEccentric passes on what the worldline refuses.
 func checkEccentric(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Waves.Equation != configs.Master {
 		return nil
 	}
-	_, err := newEccentric(c.Orbit)
-	return refusal(err)
+	if _, err := newEccentric(c.Orbit); err != nil {
+		return refusal(err)
+	}
+	if c.Span.Until == nil || c.Waves.Equation != configs.Master {
+		return nil
+	}
+	r, err := newBoundRun(c, choose(c), Options{})
+	if err != nil {
+		return refusal(err)
+	}
+	// The average and the one a period before it, which tells what the start-up
+	// still leaves.
+	if least := r.n.on() + r.window() + r.period; r.n.until < least {
+		return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+			"at least %.0f: averages at this accuracy take %d radial periods of %.6g M after the start-up, and one more to see that they have settled (or leave span out)",
+			math.Ceil(least-r.n.domain.So), r.power+1, r.period)}}
+	}
+	return nil
 }
 
 // refusal turns what a worldline says of impossible parameters into a problem of
@@ -98,7 +115,9 @@ func refusal(err error) []configs.Problem {
 // Warnings returns what a user should know about a valid case, a sentence each.
 func Warnings(c *configs.Case) []string {
 	var w []string
-	if c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Hole.Spin == 0 {
+	if c.Waves.Equation == configs.Teukolsky {
+		w = kerrWarnings(c)
+	} else if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
 		if r := c.Orbit.Radius; r < hyperboloidal.ISCORadius {
 			w = append(w, fmt.Sprintf("the circular orbit at r = %g lies inside the innermost stable one (r = 6): it is unstable, and the numbers hold for a particle kept on it", r))
 		}
@@ -107,6 +126,9 @@ func Warnings(c *configs.Case) []string {
 				w = append(w, fmt.Sprintf("the mode (%d,0) is static on a circular orbit: it radiates nothing and is not evolved", lm[0]))
 			}
 		}
+	}
+	if c.Orbit != nil && c.Orbit.Kind == configs.Inspiral && c.Orbit.MassRatio > 1e-2 {
+		w = append(w, fmt.Sprintf("orbit.mass_ratio %g is above 0.01: the waves are those of the first order in it, and what the second order adds is of the size of the mass ratio itself", c.Orbit.MassRatio))
 	}
 	if c.Accuracy.Relative < 5e-12 {
 		w = append(w, fmt.Sprintf("accuracy.relative %.3g is below what double precision reaches (about 5e-12 in a flux): expect \"not met\"", c.Accuracy.Relative))
@@ -120,15 +142,24 @@ func Warnings(c *configs.Case) []string {
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular:
+		return runKerrCircular(ctx, c, o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return runBound(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return runBurst(ctx, c, choose(c), o)
+	case c.Pulse != nil:
+		return runPulse(ctx, c, o)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return runTable(ctx, c, choose(c), o)
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
 }
+
+// transients are the kinds of orbit that come and go, or plunge.
+func transients() []string { return []string{configs.Infall, configs.Scatter, configs.Inspiral} }
 
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
@@ -138,6 +169,12 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
 		return planBound(c, choose(c))
 	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
+		return planBurst(c, choose(c))
+	case c.Pulse != nil:
+		return planPulse(c)
+	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
+		return planTable(c, choose(c))
+	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
 		return planBurst(c, choose(c))
 	}
 	return nil, fmt.Errorf("this case is not available in this version")
