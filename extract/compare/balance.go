@@ -64,6 +64,10 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 		}
 	}
 	res := ref.Result
+	drifts := res.Orbit != nil && (res.Orbit.Kind == "inspiral" || res.Orbit.Kind == "table" && !(res.Orbit.Numbers["period_r"] > 0))
+	if drifts { // the loss at t = u is wanted as well
+		lo, hi = math.Max(lo, f.T[0]), math.Min(hi, f.T[len(f.T)-1])
+	}
 	plunges := ""
 	if o := res.Orbit; o != nil {
 		if isco, ok := o.Markers["isco"]; ok && o.Markers["light_ring"] > isco {
@@ -121,7 +125,6 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 		note += "The modes beyond the largest l are estimated at each time from how the flux falls with l. "
 	}
 	note += plunges
-	drifts := res.Orbit != nil && (res.Orbit.Kind == "inspiral" || res.Orbit.Kind == "table" && !(res.Orbit.Numbers["period_r"] > 0))
 	if drifts {
 		note += "To which time of the orbit a wave belongs is known to about r_* only: the difference between the losses at t = u and at t - r_* = u is part of the bar. "
 	}
