@@ -15,6 +15,7 @@ import (
 type Tones struct {
 	M     int
 	Omega []float64
+	N, K  []int // of each tone
 	Edge  []bool
 }
 
@@ -33,6 +34,7 @@ func NewTones(m int, omegaPhi, omegaR, omegaTheta float64, nr, ntheta int) Tones
 				continue
 			}
 			t.Omega = append(t.Omega, w)
+			t.N, t.K = append(t.N, n), append(t.K, k)
 			t.Edge = append(t.Edge, nr > 0 && !inside(max(n, -n)+1, k) || ntheta > 0 && !inside(n, max(k, -k)+1))
 		}
 	}
@@ -59,6 +61,9 @@ func (t Tones) Closest() float64 {
 type Rates struct {
 	Infinity, Horizon         []Rate
 	EdgeInfinity, EdgeHorizon float64
+	// Z[end][i][j] is the amplitude of Phi of spherical l = LMin + i in tone j,
+	// e^{-i omega tau}, infinity first.
+	Z [2][][]complex128
 }
 
 // Sum adds the rates of all l.
@@ -76,17 +81,18 @@ func Sum(r []Rate) Rate {
 func BoundRates(h hyperboloidal.Kerr, t Tones, samples []certify.Samples, until, length float64) (*Rates, error) {
 	n := len(samples)
 	var z [2][][]complex128
+	fit, err := NewFit(len(samples[0].Psi[0]), 0, samples[0].Dt, until-length, length, t.Omega)
+	if err != nil {
+		return nil, err
+	}
 	for end := range z {
 		z[end] = make([][]complex128, n)
 		for l := range n {
-			var err error
-			z[end][l], err = Harmonics(samples[l].Psi[end], 0, samples[l].Dt, until-length, length, t.Omega)
-			if err != nil {
-				return nil, err
-			}
+			z[end][l] = make([]complex128, len(t.Omega))
+			fit.Read(z[end][l], samples[l].Psi[end])
 		}
 	}
-	out := &Rates{Infinity: make([]Rate, n), Horizon: make([]Rate, n)}
+	out := &Rates{Infinity: make([]Rate, n), Horizon: make([]Rate, n), Z: z}
 	var all, edge [2]float64
 	phi := make([]complex128, n)
 	for j, w := range t.Omega {
@@ -114,8 +120,12 @@ func BoundRates(h hyperboloidal.Kerr, t Tones, samples []certify.Samples, until,
 	return out, nil
 }
 
-// BoundBars are the absolute bars of Rates, entry by entry.
-type BoundBars struct{ Infinity, Horizon []Rate }
+// BoundBars are the absolute bars of Rates, entry by entry, with the readings
+// that they come from: of the coarser rung and of the earlier window.
+type BoundBars struct {
+	Infinity, Horizon []Rate
+	Coarse, Early     *Rates
+}
 
 // CertifyBound reads the rates of the finest rung and bounds them: by the
 // change between the two rungs (finest first; a coarser one with fewer l's bars
@@ -147,7 +157,7 @@ func CertifyBound(h hyperboloidal.Kerr, t Tones, rungs []Rung, until, length flo
 		slow = math.Min(slow, math.Abs(w))
 	}
 	floor := 2 * certify.RoundOff(rungs[0].Points, slow)
-	bars := &BoundBars{}
+	bars := &BoundBars{Coarse: coarse, Early: early}
 	bar := func(a, b, e []Rate, edge float64) []Rate {
 		out := make([]Rate, len(a))
 		for l := range a {

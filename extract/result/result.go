@@ -180,9 +180,11 @@ type Result struct {
 	Total       *Total            `json:"total,omitempty"`
 	Ringing     []Ringing         `json:"ringing,omitempty"`
 	Tail        []Tail            `json:"tail,omitempty"`
-	Rungs       []Rung            `json:"rungs"`
-	Accuracy    Accuracy          `json:"accuracy"`
-	Warnings    []string          `json:"warnings"`
+	// SecondOpinion is there when it was asked for.
+	SecondOpinion []SecondOpinion `json:"second_opinion,omitempty"`
+	Rungs         []Rung          `json:"rungs"`
+	Accuracy      Accuracy        `json:"accuracy"`
+	Warnings      []string        `json:"warnings"`
 }
 
 // ModeSeries is the stored time series of one mode, sampled like its Series.

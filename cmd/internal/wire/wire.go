@@ -142,8 +142,10 @@ func Warnings(c *configs.Case) []string {
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
 	switch {
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular:
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
 		return runKerrCircular(ctx, c, o)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+		return runKerrBound(ctx, c, o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
@@ -164,6 +166,10 @@ func transients() []string { return []string{configs.Infall, configs.Scatter, co
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+		return planKerrCircular(c)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+		return planKerrBound(c)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
