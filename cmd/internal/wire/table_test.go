@@ -164,7 +164,6 @@ func TestCircularTable(t *testing.T) {
 	}
 }
 
-
 // TestEccentricTable: an eccentric orbit given as rows 0.5 M apart has the fluxes
 // of the independent table.
 func TestEccentricTable(t *testing.T) {
