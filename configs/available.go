@@ -12,7 +12,7 @@ var features = map[string]bool{
 	"orbit.kind " + Inspiral:      true,
 	"orbit.kind " + Table:         true,
 	"waves.equation " + Master:    true,
-	"waves.equation " + Teukolsky: false,
+	"waves.equation " + Teukolsky: true,
 	pulsesTeukolsky:               true,
 	"pulse":                       true,
 	"model":                       true,

@@ -15,5 +15,6 @@ func main() {
 }
 
 func engine() app.Engine {
-	return app.Engine{Checks: wire.Checks, Warnings: wire.Warnings, Plan: wire.MakePlan, Run: wire.Run}
+	return app.Engine{Checks: wire.Checks, Warnings: wire.Warnings, Plan: wire.MakePlan, Run: wire.Run,
+		CanAsk: wire.CanAsk, SecondOpinion: wire.SecondOpinion}
 }

@@ -80,6 +80,8 @@ type Total struct {
 	Horizon    *Flux       `json:"horizon,omitempty"`
 	Truncation *Truncation `json:"truncation,omitempty"`
 	Recoil     *Recoil     `json:"recoil,omitempty"`
+	// SpectrumPeak is the frequency, 1/M, of the largest dE/domega of a burst.
+	SpectrumPeak *Q `json:"spectrum_peak,omitempty"`
 }
 
 // Truncation is the estimate of what the modes beyond LMax would add.
@@ -180,9 +182,11 @@ type Result struct {
 	Total       *Total            `json:"total,omitempty"`
 	Ringing     []Ringing         `json:"ringing,omitempty"`
 	Tail        []Tail            `json:"tail,omitempty"`
-	Rungs       []Rung            `json:"rungs"`
-	Accuracy    Accuracy          `json:"accuracy"`
-	Warnings    []string          `json:"warnings"`
+	// SecondOpinion is there when it was asked for.
+	SecondOpinion []SecondOpinion `json:"second_opinion,omitempty"`
+	Rungs         []Rung          `json:"rungs"`
+	Accuracy      Accuracy        `json:"accuracy"`
+	Warnings      []string        `json:"warnings"`
 }
 
 // ModeSeries is the stored time series of one mode, sampled like its Series.
@@ -225,10 +229,18 @@ type Series struct {
 	HorizonPrefix string       // name prefix of the horizon field, e.g. "psi"
 }
 
+// Spectrum is the energy spectrum of a burst at null infinity, summed over the
+// modes that were run, positive frequencies standing for both signs:
+// dE/domega in mu^2 against omega in 1/M, with absolute bars.
+type Spectrum struct {
+	Omega, Density, Err []float64
+}
+
 // Bundle is everything a run hands to storage and report.
 type Bundle struct {
-	Result *Result
-	Series *Series
+	Result   *Result
+	Series   *Series
+	Spectrum *Spectrum // nil where there is none
 }
 
 // Find returns the mode (l,m), or nil.

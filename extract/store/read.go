@@ -61,7 +61,11 @@ func Read(dir string) (*result.Bundle, []byte, error) {
 	if !wave && !horizon {
 		s = nil
 	}
-	return &result.Bundle{Result: r, Series: s}, caseYAML, nil
+	spectrum, err := readSpectrum(dir)
+	if err != nil {
+		return nil, nil, err
+	}
+	return &result.Bundle{Result: r, Series: s, Spectrum: spectrum}, caseYAML, nil
 }
 
 func readWhole(dir, name string) ([]byte, error) {

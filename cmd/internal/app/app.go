@@ -36,6 +36,12 @@ type Engine struct {
 	// Run evolves a case. When the context ends it returns an error that wraps
 	// the context's; a numerical failure is an *evolve.Failure.
 	Run func(context.Context, *configs.Case, wire.Options) (*result.Bundle, error)
+	// CanAsk says whether SecondOpinion can be had for a case, by the sentence
+	// of its error where not.
+	CanAsk func(*configs.Case) error
+	// SecondOpinion solves a finished case by another method and stores what
+	// that gives in the result.
+	SecondOpinion func(ctx context.Context, c *configs.Case, r *result.Result, workers int) error
 }
 
 // Run carries out the command line args (without the program's name) and
@@ -66,6 +72,8 @@ type command struct {
 	quiet   bool
 	json    bool
 	long    bool
+	page    string
+	second  bool
 }
 
 func (c *command) execute(ctx context.Context, args []string) int {

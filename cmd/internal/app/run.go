@@ -33,6 +33,7 @@ func (c *command) runCommand() *cobra.Command {
 	cmd.Flags().StringVar(&c.out, "out", "", "result `directory` (default results/<case file name>)")
 	cmd.Flags().BoolVar(&c.resume, "resume", false, "take over the finished parts of an interrupted run")
 	cmd.Flags().BoolVar(&c.force, "force", false, "replace another case's result in the result directory")
+	cmd.Flags().BoolVar(&c.second, "second-opinion", false, "solve a circular orbit in the frequency domain as well and set the numbers beside each other")
 	return cmd
 }
 
@@ -44,6 +45,11 @@ func (c *command) run(cmd *cobra.Command, path string) error {
 	caseYAML, err := kase.YAML()
 	if err != nil {
 		return coded(ExitUsage, err)
+	}
+	if c.second {
+		if err := c.engine.CanAsk(kase); err != nil {
+			return usagef("--second-opinion: %w", err)
+		}
 	}
 	dir := c.out
 	if dir == "" {
@@ -64,6 +70,11 @@ func (c *command) run(cmd *cobra.Command, path string) error {
 	bundle, err := c.evolve(cmd.Context(), kase, kept)
 	if err != nil {
 		return c.stopped(err, kept)
+	}
+	if c.second {
+		if err := c.engine.SecondOpinion(cmd.Context(), kase, bundle.Result, c.workers); err != nil {
+			return c.stopped(err, kept)
+		}
 	}
 	if err := c.store(dir, bundle, kase, caseYAML); err != nil {
 		if kept.any.Load() {
@@ -142,6 +153,11 @@ func (c *command) show(cmd *cobra.Command, dir string, r *result.Result) error {
 	}
 	if err := report.Terminal(out, r, columns(c.stdout), wantsColour(c.stdout)); err != nil {
 		return err
+	}
+	if c.second {
+		if err := opinions(out, r.SecondOpinion); err != nil {
+			return err
+		}
 	}
 	entries, err := os.ReadDir(dir)
 	if err != nil {

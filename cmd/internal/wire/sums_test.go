@@ -101,3 +101,13 @@ func TestSpanThatIsTooShortIsRefused(t *testing.T) {
 		run(t, c)
 	}
 }
+
+// TestConventionsSpeakOfWhatIsThere: what is true of circular orbits alone is
+// told of no pulse.
+func TestConventionsSpeakOfWhatIsThere(t *testing.T) {
+	for key := range pulseConventions() {
+		if strings.HasPrefix(key, "circular") || strings.HasPrefix(key, "orbital") {
+			t.Errorf("a pulse's result states %q", key)
+		}
+	}
+}

@@ -7,7 +7,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"slices"
+	"math"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -58,11 +58,11 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkTable, checkSpan, pulseProblems}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable, checkKerr}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Circular || c.Waves.Equation != configs.Master {
 		return nil
 	}
 	switch r := c.Orbit.Radius; {
@@ -78,11 +78,27 @@ func checkCircular(c *configs.Case) []configs.Problem {
 
 // checkEccentric passes on what the worldline refuses.
 func checkEccentric(c *configs.Case) []configs.Problem {
-	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Hole.Spin != 0 {
+	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Waves.Equation != configs.Master {
 		return nil
 	}
-	_, err := newEccentric(c.Orbit)
-	return refusal(err)
+	if _, err := newEccentric(c.Orbit); err != nil {
+		return refusal(err)
+	}
+	if c.Span.Until == nil || c.Waves.Equation != configs.Master {
+		return nil
+	}
+	r, err := newBoundRun(c, choose(c), Options{})
+	if err != nil {
+		return refusal(err)
+	}
+	// The average and the one a period before it, which tells what the start-up
+	// still leaves.
+	if least := r.n.on() + r.window() + r.period; r.n.until < least {
+		return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+			"at least %.0f: averages at this accuracy take %d radial periods of %.6g M after the start-up, and one more to see that they have settled (or leave span out)",
+			math.Ceil(least-r.n.domain.So), r.power+1, r.period)}}
+	}
+	return nil
 }
 
 // refusal turns what a worldline says of impossible parameters into a problem of
@@ -98,7 +114,9 @@ func refusal(err error) []configs.Problem {
 // Warnings returns what a user should know about a valid case, a sentence each.
 func Warnings(c *configs.Case) []string {
 	var w []string
-	if c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Hole.Spin == 0 {
+	if c.Waves.Equation == configs.Teukolsky {
+		w = kerrWarnings(c)
+	} else if c.Orbit != nil && c.Orbit.Kind == configs.Circular {
 		if r := c.Orbit.Radius; r < hyperboloidal.ISCORadius {
 			w = append(w, fmt.Sprintf("the circular orbit at r = %g lies inside the innermost stable one (r = 6): it is unstable, and the numbers hold for a particle kept on it", r))
 		}
@@ -108,10 +126,54 @@ func Warnings(c *configs.Case) []string {
 			}
 		}
 	}
+	if c.Orbit != nil && c.Orbit.Kind == configs.Inspiral && c.Orbit.MassRatio > 1e-2 {
+		w = append(w, fmt.Sprintf("orbit.mass_ratio %g is above 0.01: the waves are those of the first order in it, and what the second order adds is of the size of the mass ratio itself", c.Orbit.MassRatio))
+	}
 	if c.Accuracy.Relative < 5e-12 {
 		w = append(w, fmt.Sprintf("accuracy.relative %.3g is below what double precision reaches (about 5e-12 in a flux): expect \"not met\"", c.Accuracy.Relative))
 	}
 	return w
+}
+
+// engine runs and plans the cases of one kind.
+type engine struct {
+	run  func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error)
+	plan func(c *configs.Case) (*Plan, error)
+}
+
+// engineOf picks the engine of a case, or says that there is none.
+func engineOf(c *configs.Case) (engine, error) {
+	with := func(run func(context.Context, *configs.Case, numerics, Options) (*result.Bundle, error), plan func(*configs.Case, numerics) (*Plan, error)) engine {
+		return engine{
+			run: func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
+				return run(ctx, c, choose(c), o)
+			},
+			plan: func(c *configs.Case) (*Plan, error) { return plan(c, choose(c)) },
+		}
+	}
+	if c.Pulse != nil {
+		return engine{runPulse, planPulse}, nil
+	}
+	if c.Waves.Equation == configs.Teukolsky {
+		switch {
+		case c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+			return engine{runKerrCircular, planKerrCircular}, nil
+		case kerrKind(c.Orbit.Kind):
+			return engine{runKerrBound, planKerrBound}, nil
+		}
+		return engine{}, fmt.Errorf("orbit.kind %s with waves.equation teukolsky is not available in this version", c.Orbit.Kind)
+	}
+	switch c.Orbit.Kind {
+	case configs.Circular:
+		return with(runCircular, planCircular), nil
+	case configs.Eccentric:
+		return with(runBound, planBound), nil
+	case configs.Infall, configs.Scatter, configs.Inspiral:
+		return with(runBurst, planBurst), nil
+	case configs.Table:
+		return with(runTable, planTable), nil
+	}
+	return engine{}, fmt.Errorf("orbit.kind %s is not available in this version", c.Orbit.Kind)
 }
 
 // Run evolves the case and certifies its numbers. The error wraps the
@@ -119,36 +181,20 @@ func Warnings(c *configs.Case) []string {
 // breaks down.
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
-	switch {
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return runCircular(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return runBound(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
-		return runBurst(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
-		return runTable(ctx, c, choose(c), o)
-	case c.Pulse != nil:
-		return runPulse(ctx, c, o)
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.run(ctx, c, o)
 }
 
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
-	switch {
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return planCircular(c, choose(c))
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return planBound(c, choose(c))
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
-		return planBurst(c, choose(c))
-	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
-		return planTable(c, choose(c))
-	case c.Pulse != nil:
-		return planPulse(c)
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.plan(c)
 }
 
 // conventions are what the tool states in every result.
