@@ -43,7 +43,7 @@ func (r *burstRun) peaks(res *result.Result) {
 		return
 	}
 	at := r.times()
-	left := certify.Leftover(min(r.n.order, r.n.moments))
+	left := certify.Leftover(min(r.n.order, r.n.moments, resampled))
 	markers := map[string]float64{}
 	for _, k := range r.path.Markers() {
 		markers[k.Name] = k.T
@@ -58,7 +58,7 @@ func (r *burstRun) peaks(res *result.Result) {
 		for i, u := range at {
 			fine.Err[i] = r.starts[m].at(int(certify.Infinity), u+r.n.domain.So) * abs(strain.Factor(m.l, false))
 		}
-		o := peak.Options{From: r.event - 60, To: at[len(at)-1] - 5, Coarse: &mid, Factor: left}
+		o := peak.Options{From: r.event - 60, To: at[len(at)-1] - 5, Coarse: &mid, Factor: math.Max(left, r.unsettledAtPeak(m, at, fine, mid))}
 		p, err := peak.Find(fine, o)
 		if err != nil {
 			continue // a mode without a clear maximum has none to report
@@ -75,6 +75,28 @@ func (r *burstRun) peaks(res *result.Result) {
 		p.U.Value += r.origin
 		entry.Peak = p
 	}
+}
+
+// unsettledAtPeak is what the rungs leave open around a mode's largest sample,
+// in units of their last difference, as they approach each other there.
+func (r *burstRun) unsettledAtPeak(m *ladder, at []float64, fine, mid signal.Series) float64 {
+	if m.runs[m.rung-2] == nil {
+		return 0
+	}
+	coarse := r.seriesOn(m, m.rung-2, at, false)
+	top := 0
+	for i, v := range fine.Values {
+		if at[i] >= r.event-60 && abs(v) > abs(fine.Values[top]) {
+			top = i
+		}
+	}
+	last, before := []float64{0}, []float64{0}
+	const reach = int(12 / traitStep)
+	for i := max(0, top-reach); i <= min(len(at)-1, top+reach); i++ {
+		last[0] = math.Max(last[0], abs(fine.Values[i]-mid.Values[i]))
+		before[0] = math.Max(before[0], abs(mid.Values[i]-coarse.Values[i]))
+	}
+	return unsettled(last, before)[0]
 }
 
 func abs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }

@@ -241,7 +241,7 @@ func (r *kerrBound) scout(ctx context.Context, t *kerrTones) error {
 		}
 		need = max(need, ending(e, r.asked/2))
 	}
-	t.last = max(t.last, lowest(t.m)+need-1)
+	t.last = max(t.last, lowest(t.m)+need) // one more than the look found
 	return nil
 }
 
@@ -289,7 +289,7 @@ func (r *kerrBound) certify(t *kerrTones) (climb bool, err error) {
 			return false, fmt.Errorf("m = %d: %w", t.m, err)
 		}
 		t.tones, t.rates, t.bars = tones, rates, bars
-		if math.Max(rates.EdgeInfinity, rates.EdgeHorizon) < r.asked/20 || more >= 16 {
+		if math.Max(rates.EdgeInfinity, rates.EdgeHorizon) < math.Max(r.asked/1000, 1e-13) || more >= 16 {
 			break
 		}
 	}
@@ -309,7 +309,7 @@ func (r *kerrBound) certify(t *kerrTones) (climb bool, err error) {
 			})
 			size += math.Abs(value[i].Energy)
 			if i < len(other) {
-				disc += certify.Leftover(kerrOrder) * math.Abs(value[i].Energy-other[i].Energy)
+				disc += kerr.Remainder * math.Abs(value[i].Energy-other[i].Energy)
 			}
 		}
 		sum := flux.Sum(parts...)

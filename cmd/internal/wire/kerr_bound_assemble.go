@@ -8,6 +8,7 @@ import (
 
 	"nullmark/configs"
 	"nullmark/extract/certify"
+	"nullmark/extract/kerr"
 	"nullmark/extract/result"
 	"nullmark/source/worldline"
 )
@@ -215,7 +216,7 @@ func (r *kerrBound) toned(t *kerrTones, end certify.End, i int, mirrored bool, a
 		disc := cmplx.Abs(w[k])
 		if coarse != nil {
 			apart[k] = cmplx.Abs(w[k] - coarse[k])
-			disc = certify.Leftover(kerrOrder) * apart[k]
+			disc = kerr.Remainder * apart[k]
 		}
 		bar[k] = disc + cmplx.Abs(w[k]-early[k]) + edge + round*size
 	}

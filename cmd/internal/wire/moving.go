@@ -299,6 +299,11 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 		}
 		round := 2 * certify.RoundOff(m.points[m.rung], math.Max(1, float64(m.m))*r.numbers["omega_phi"])
 		path := r.pathError(m)
+		if s, ok := r.starts[m]; ok && r.half != nil {
+			// Rounded rows make a noise that adds its own power; grids of
+			// different spacing see different parts of it.
+			path = s.path[e] + far*far
+		}
 		edges := certify.WindowError(m.runs[m.rung], end, m.until, r.period, r.power)
 		bar := func(x [3]float64, settle float64) certify.Budget {
 			d := math.Max(math.Abs(x[0]-x[1]), 0.02*far*math.Abs(x[0]))
@@ -321,7 +326,9 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 			m.met = false
 			m.why = strings.TrimPrefix(m.why+fmt.Sprintf("; at %s the %s holds the bar at %.1e", end, f.energyBar.Largest(), b), "; ")
 			rest := f.energyBar.Transient + f.energyBar.RoundOff
-			if f.energyBar.Discretisation > 0.3*math.Max(m.allow[e]-rest, 0) && f.energyBar.Discretisation > f.energyBar.RoundOff {
+			if r.rough(m, end) && f.energyBar.Discretisation > rest {
+				m.why += ", where the table's rows are too rough for a finer grid to help"
+			} else if f.energyBar.Discretisation > 0.3*math.Max(m.allow[e]-rest, 0) && f.energyBar.Discretisation > f.energyBar.RoundOff {
 				climb = true
 			}
 		}
@@ -338,17 +345,22 @@ func (r *boundRun) pathError(m *ladder) float64 {
 }
 
 // junk runs every mode once more on the coarsest rung with a later ramp: what
-// the switch-on leaves in a sample is where the two differ. It returns the
+// the switch-on leaves in a sample is where the two differ. (A table also runs
+// through every second of its rows.) It returns the
 // difference of the strains by mode, on the steps of the coarsest rung.
 func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 	r.meter.stage("start-up")
 	out := make([]junkSeries, len(r.modes))
 	blocks := chunk(len(r.modes))
-	later := *r
-	later.n.ramp.Centre += later.delay()
+	later := r.n.ramp
+	later.Centre += r.delay()
+	variants := []variant{{r.n.ramp, r.worldline()}, {later, r.worldline()}}
+	if r.half != nil {
+		variants = append(variants, variant{r.n.ramp, r.half})
+	}
 	for _, b := range blocks {
 		for _, m := range r.modes[b[0]:b[1]] {
-			r.expect(0, m.until/blockModes*2)
+			r.expect(0, m.until/blockModes*float64(len(variants)))
 		}
 	}
 	err := each(ctx, r.o.Workers, len(blocks), func(ctx context.Context, i int) error {
@@ -357,15 +369,15 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		for _, m := range group {
 			until = math.Max(until, m.until)
 		}
-		var runs [2]*blockRun
-		for j, n := range []numerics{r.n, later.n} {
+		runs := make([]*blockRun, len(variants))
+		for j, v := range variants {
 			var list []blockMode
 			for _, m := range group {
 				list = append(list, m.blockMode)
 			}
-			force := r.forceWith(n.ramp, group)
+			force := movingForce(v.path, v.ramp, group)
 			b, err := kept(r.o.Keep, fmt.Sprintf("start-up-%d-%d", i, j), func() (*blockRun, error) {
-				return n.evolveBlock(ctx, list, force, 0, until, nil, r.meter.did)
+				return r.n.evolveBlock(ctx, list, force, 0, until, nil, r.meter.did)
 			})
 			if err != nil {
 				return err
@@ -374,10 +386,17 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		}
 		for q := range group {
 			s := junkSeries{dt: runs[0].Dt}
+			if r.half != nil {
+				s.full, s.thin = &runs[0].Samples[q], &runs[2].Samples[q]
+			}
 			if k, ok := r.kind.(interface {
-				moved(m *ladder, a, b *certify.Samples) [2]float64
+				moved(m *ladder, runs []*certify.Samples) (start, path [2]float64)
 			}); ok {
-				s.moved = k.moved(group[q], &runs[0].Samples[q], &runs[1].Samples[q])
+				var same []*certify.Samples
+				for _, b := range runs {
+					same = append(same, &b.Samples[q])
+				}
+				s.moved, s.path = k.moved(group[q], same)
 			}
 			for e := range s.psi {
 				a, b := runs[0].Samples[q].Psi[e], runs[1].Samples[q].Psi[e]
@@ -421,27 +440,6 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 // delay is how much later the second switch-on comes.
 func (r *climb) delay() float64 { return 25 }
 
-// moved bounds the relative change of a mode's averaged fluxes that is left of
-// the start-up, from what the later switch-on changes: a remainder that falls
-// like a power of the time since then is that change times the ratio of the two
-// times, or less.
-func (r *boundRun) moved(m *ladder, a, b *certify.Samples) (out [2]float64) {
-	since := math.Max((r.n.until-r.n.ramp.Centre)/r.delay(), 1)
-	for e := range out {
-		out[e] = math.Inf(1)
-		e0, s0, err0 := r.mean(a, m, certify.End(e), r.n.until)
-		e1, s1, err1 := r.mean(b, m, certify.End(e), r.n.until)
-		if r.table == nil || err0 != nil || err1 != nil {
-			continue
-		}
-		out[e] = since * math.Abs(e0-e1) / e0
-		if s0 != 0 {
-			out[e] = math.Max(out[e], since*math.Abs((s0-s1)/s0))
-		}
-	}
-	return out
-}
-
 // junkSeries is the falling envelope of what a later switch-on changes in Psi.
 type junkSeries struct {
 	dt   float64
@@ -450,7 +448,10 @@ type junkSeries struct {
 	peak [2]float64   // of |Psi| after the switch-on, on the coarsest rung
 	sent [2]float64   // integral of |Psi_tau|^2 after the switch-on
 
-	moved [2]float64 // what the start-up may change in an averaged flux, relative, of tables
+	moved [2]float64 // what the start-up may change in a table's averaged flux, relative
+	path  [2]float64 // what the rows' rounding and spacing may change in it, relative
+
+	full, thin *certify.Samples // through all rows and every second, on the coarsest rung
 }
 
 // at is the envelope at slice tau.
@@ -466,12 +467,18 @@ func (j junkSeries) energy(e int, tau, power float64) float64 {
 	return 2*math.Sqrt(power*j.rest[e][k]) + j.rest[e][k]
 }
 
-// forceWith makes a forcing with another ramp.
-func (r *climb) forceWith(ramp source.Ramp, modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {
+// worldline is the path of the particle.
+func (r *climb) worldline() worldline.Worldline {
 	if p, ok := r.kind.(interface{ worldline() worldline.Worldline }); ok {
-		return movingForce(p.worldline(), ramp, modes)
+		return p.worldline()
 	}
 	panic("wire: this kind of orbit has no worldline")
+}
+
+// variant is one of the runs on the coarsest rung that are compared.
+type variant struct {
+	ramp source.Ramp
+	path worldline.Worldline
 }
 
 func (r *boundRun) worldline() worldline.Worldline { return r.path }
@@ -508,6 +515,7 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	sumModes(c, res, rate)
 	verdict(c, res)
+	r.tellDrift(res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, junk, dphi)
 	if s != nil {

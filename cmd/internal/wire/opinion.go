@@ -66,8 +66,12 @@ func SecondOpinion(ctx context.Context, c *configs.Case, res *result.Result, wor
 	return nil
 }
 
-// opinionMargin is how many l's beyond those compared are carried.
-const opinionMargin = 6
+// opinionLeast is how many l's a sum has at least, opinionMargin how many
+// beyond those compared are carried.
+const (
+	opinionLeast  = 8
+	opinionMargin = 6
+)
 
 // tilted says whether an orbit leaves the equator.
 func tilted(c *configs.Case) bool {
@@ -76,7 +80,7 @@ func tilted(c *configs.Case) bool {
 
 // opinionAt is the second opinion at one m: a sum over the tones of the orbit.
 func opinionAt(c *configs.Case, res *result.Result, h hyperboloidal.Kerr, orb *worldline.KerrBound, m, top int) ([]result.SecondOpinion, error) {
-	n := top - lowest(m) + 1 + opinionMargin
+	n := max(top-lowest(m)+1, opinionLeast) + opinionMargin
 	kmax := 0
 	if tilted(c) {
 		kmax = n + 2
@@ -127,7 +131,11 @@ func opinionAt(c *configs.Case, res *result.Result, h hyperboloidal.Kerr, orb *w
 				s.Value += e[k][l]
 				s.Error += de[k][l]
 			}
-			factor := signs(res, m)
+			s.Error += math.Abs(e[k][n-1]) + math.Abs(e[k][n-2]) // where the sum is cut
+			factor := 2.0                                        // both signs of m
+			if m == 0 {
+				factor = 1
+			}
 			out = append(out, result.SecondOpinion{M: m, What: where[k], Value: f.Energy, Second: result.Q{Value: factor * s.Value, Error: factor * s.Error}})
 		}
 	}

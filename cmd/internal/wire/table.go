@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"path/filepath"
 	"sort"
 
 	"nullmark/configs"
@@ -46,7 +47,7 @@ func (e *tooShort) Error() string {
 func newTablePath(o *configs.Orbit) (*tablePath, error) {
 	f, err := table.Open(o.File)
 	if err != nil {
-		return nil, tableFaults{err.Error()}
+		return nil, tableFaults{sentence(err)}
 	}
 	defer f.Close()
 	tr, err := table.ReadTrajectory(f, table.TrajectoryNames{
@@ -54,7 +55,7 @@ func newTablePath(o *configs.Orbit) (*tablePath, error) {
 		PR: o.Columns.PR, PPhi: o.Columns.PPhi, E: o.Columns.E, L: o.Columns.L,
 	})
 	if err != nil {
-		return nil, tableFaults{err.Error()}
+		return nil, tableFaults{sentence(err)}
 	}
 	for i, th := range tr.Theta {
 		if math.Abs(th-math.Pi/2) > 1e-9 {
@@ -78,6 +79,21 @@ func newTablePath(o *configs.Orbit) (*tablePath, error) {
 	dr, _ := p.Uncertainty()
 	p.turn(math.Max(1e-9*p.rmin, 30*dr))
 	return p, nil
+}
+
+// sentence is what a file's fault says, without the directory, which the case
+// file's fault shows already, and with rows counted from 1 like everywhere here.
+func sentence(err error) string {
+	var f *table.Fault
+	if !errors.As(err, &f) {
+		return err.Error()
+	}
+	short := *f
+	short.File = filepath.Base(f.File)
+	if short.Row >= 0 {
+		short.Row++
+	}
+	return short.Error()
 }
 
 // faults turns what the worldline says into sentences, with the table's own times.
@@ -300,7 +316,7 @@ func checkTable(c *configs.Case) []configs.Problem {
 		return []configs.Problem{{Key: "orbit.file", Value: c.Orbit.File, Want: "a trajectory that can be followed; " + err.Error()}}
 	}
 	if p.transient() {
-		return nil
+		return p.room(c)
 	}
 	n := choose(c)
 	_, err = p.plan(&n, c)
@@ -324,4 +340,33 @@ func (p *tablePath) notes() []string {
 		w = append(w, fmt.Sprintf("the table holds a single passage: the totals are those between its first and its last row (r = %.6g and %.6g)", p.samples.R[0], p.samples.R[len(p.samples.R)-1]))
 	}
 	return w
+}
+
+// room refuses a plunge or passage that leaves no time for the start-up before
+// it, or none after it.
+func (p *tablePath) room(c *configs.Case) []configs.Problem {
+	const before = 60
+	r, err := newBurstRun(c, choose(c), Options{})
+	if err != nil {
+		return nil
+	}
+	what := "its closest approach"
+	if p.plunges() {
+		what = "its plunge"
+	}
+	if r.event < before {
+		return []configs.Problem{{Key: "orbit.file", Value: c.Orbit.File,
+			Want: fmt.Sprintf("a trajectory that begins at least %d M before %s, and this one begins %.4g M before it: begin earlier", before, what, r.event)}}
+	}
+	var s worldline.State
+	p.At(math.Min(r.event, p.last), &s)
+	last := r.n.domain.Retarded(r.ends)
+	if least := r.event - math.Max(s.Rstar, 0) + afterEvent; last < least {
+		if r.n.until > 0 && last < r.n.domain.Retarded(lastSlice(p, &r.n, p.last))-1 {
+			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf("at least %g on this orbit: %s and what follows", math.Ceil(least+p.origin), what)}}
+		}
+		return []configs.Problem{{Key: "orbit.file", Value: c.Orbit.File,
+			Want: fmt.Sprintf("a trajectory that goes on for at least %.0f M more after %s", math.Ceil(least-last), what)}}
+	}
+	return nil
 }

@@ -56,7 +56,7 @@ func (p *tablePath) plan(n *numerics, c *configs.Case) (averaging, error) {
 		if a.radial {
 			what = "radial"
 		}
-		return a, &tooShort{what: what, have: math.Max(have, 0), need: 2*a.period - (end - quiet), untilKey: asked && end < lastSlice(p, n, p.last)-2*a.period}
+		return a, &tooShort{what: what, have: math.Max(have, 0), need: 2*a.period - (end - quiet), untilKey: asked && lastSlice(p, n, p.last)-quiet >= 2*a.period}
 	}
 	if fits := int(have) - 1; fits < a.power {
 		a.power = max(fits, 1)
@@ -83,6 +83,7 @@ func newTableRun(c *configs.Case, n numerics, o Options, p *tablePath) (*boundRu
 	r := &boundRun{climb: newClimb(n, o), path: p, numbers: numbersOf(p), asked: c.Accuracy.Relative, floor: c.Accuracy.Floor, power: a.power, period: a.period, table: p, cycle: a.cycle}
 	r.kind = r
 	r.origin = p.origin
+	r.half, r.halved = p.thin()
 	r.numbers["omega_phi"] = a.advance
 	var modes [][2]int
 	for _, lm := range c.ModeList() {
@@ -93,6 +94,72 @@ func newTableRun(c *configs.Case, n numerics, o Options, p *tablePath) (*boundRu
 	}
 	r.enter(modes)
 	return r, nil
+}
+
+// moved bounds the relative changes of a mode's averaged fluxes that are left of
+// the start-up and that the rows cause, from runs on the coarsest rung: as it is,
+// switched on later, through every second row.
+//
+// A remainder of the start-up that falls like a power of the time since then is
+// the change times the ratio of the two times, or less. Of the change that the
+// missing rows make, their spacing leaves in the full table what its
+// interpolation error is of the thinner one's, and their rounding all of it.
+func (r *boundRun) moved(m *ladder, runs []*certify.Samples) (start, path [2]float64) {
+	late := math.Max((r.n.until-r.n.ramp.Centre)/r.delay(), 1)
+	change := func(e int, a, b *certify.Samples) float64 {
+		e0, s0, err0 := r.mean(a, m, certify.End(e), r.n.until)
+		e1, s1, err1 := r.mean(b, m, certify.End(e), r.n.until)
+		if err0 != nil || err1 != nil {
+			return math.Inf(1)
+		}
+		d := math.Abs(e0-e1) / e0
+		if s0 != 0 {
+			d = math.Max(d, math.Abs((s0-s1)/s0))
+		}
+		return d
+	}
+	for e := range start {
+		start[e] = math.Inf(1)
+		if r.table != nil {
+			start[e] = late * change(e, runs[0], runs[1])
+		}
+		if len(runs) > 2 {
+			path[e] = r.halved * change(e, runs[0], runs[2])
+		}
+	}
+	return start, path
+}
+
+// rough says whether the two finest rungs of a mode differ hardly less than the
+// two before them: what they differ by is then the noise of the rows.
+func (r *boundRun) rough(m *ladder, end certify.End) bool {
+	a, b, c := m.runs[m.rung], m.runs[m.rung-1], m.runs[m.rung-2]
+	if r.table == nil || c == nil {
+		return false
+	}
+	d := func(x, y *certify.Samples) float64 {
+		return certify.Distance(x, y, end, m.until, r.period, r.power)
+	}
+	return d(a, b) > 0.4*d(b, c)
+}
+
+// thin is the path through every second row, with the fraction of its error
+// that the full table has; nil when there are too few rows or they are too far
+// apart for it.
+func (p *tablePath) thin() (worldline.Worldline, float64) {
+	var s worldline.Samples
+	for i := 0; i < len(p.samples.T); i++ {
+		if i%2 == 0 || i == len(p.samples.T)-1 {
+			s.T, s.R, s.Phi = append(s.T, p.samples.T[i]), append(s.R, p.samples.R[i]), append(s.Phi, p.samples.Phi[i])
+		}
+	}
+	w, err := worldline.NewTable(s, false)
+	if err != nil {
+		return nil, 0
+	}
+	dr, dphi := p.Uncertainty()
+	hr, hphi := w.Uncertainty()
+	return w, math.Min(1, math.Max(dr/hr, dphi/hphi))
 }
 
 // runTable measures rates or totals, as the table's motion is.
@@ -201,7 +268,31 @@ func (r *climb) choice(ctx context.Context, p *tablePath, until float64, energy 
 func tellChoice(c *configs.Case, res *result.Result, difference float64) {
 	res.Orbit.Numbers["own_energy_difference"] = difference
 	if math.Abs(difference) > c.Accuracy.Relative {
-		res.Warnings = append(res.Warnings, fmt.Sprintf("the table's E and L are not those of its velocity, which are used here: with the table's own the radiated energy of the strongest modes changes by %.2g of it", difference))
+		res.Warnings = append(res.Warnings, fmt.Sprintf("the table's E and L are not those of its velocity, which are used here: with the table's own the radiated energy of the strongest modes would change by %+.2g of itself", difference))
 	}
 	res.Conventions["constants"] = "E and L of the source are those of the momentary velocity, u^t from its norm; own_energy_difference is what the table's own columns would change, relative"
+}
+
+// tellDrift says how much the averaged flux of the strongest mode changes from
+// one period to the next, where the start-up does not explain it.
+func (r *boundRun) tellDrift(res *result.Result) {
+	var top *ladder
+	for _, m := range r.modes {
+		if top == nil || m.mov.flux[0].energy > top.mov.flux[0].energy {
+			top = m
+		}
+	}
+	if r.table == nil || top == nil {
+		return
+	}
+	e0, _, err0 := r.mean(top.runs[top.rung], top, certify.Infinity, r.n.until)
+	e1, _, err1 := r.mean(top.runs[top.rung], top, certify.Infinity, r.n.until-r.period)
+	if err0 != nil || err1 != nil {
+		return
+	}
+	change := (e0 - e1) / e0
+	res.Orbit.Numbers["flux_change_per_period"] = change
+	if math.Abs(change) > 2*math.Max(r.starts[top].moved[0], top.mov.flux[0].energyBar.Bar()) {
+		res.Warnings = append(res.Warnings, fmt.Sprintf("the orbit changes: the averaged flux of the mode (%d,%d) grows by %.2g of itself in one period, and the averages hold for their window (see conventions)", top.l, top.m, change))
+	}
 }

@@ -7,7 +7,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"slices"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -121,54 +120,66 @@ func Warnings(c *configs.Case) []string {
 	return w
 }
 
+// engine runs and plans the cases of one kind.
+type engine struct {
+	run  func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error)
+	plan func(c *configs.Case) (*Plan, error)
+}
+
+// engineOf picks the engine of a case, or says that there is none.
+func engineOf(c *configs.Case) (engine, error) {
+	with := func(run func(context.Context, *configs.Case, numerics, Options) (*result.Bundle, error), plan func(*configs.Case, numerics) (*Plan, error)) engine {
+		return engine{
+			run: func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
+				return run(ctx, c, choose(c), o)
+			},
+			plan: func(c *configs.Case) (*Plan, error) { return plan(c, choose(c)) },
+		}
+	}
+	if c.Pulse != nil {
+		return engine{runPulse, planPulse}, nil
+	}
+	if c.Waves.Equation == configs.Teukolsky {
+		switch {
+		case c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+			return engine{runKerrCircular, planKerrCircular}, nil
+		case kerrKind(c.Orbit.Kind):
+			return engine{runKerrBound, planKerrBound}, nil
+		}
+		return engine{}, fmt.Errorf("orbit.kind %s with waves.equation teukolsky is not available in this version", c.Orbit.Kind)
+	}
+	switch c.Orbit.Kind {
+	case configs.Circular:
+		return with(runCircular, planCircular), nil
+	case configs.Eccentric:
+		return with(runBound, planBound), nil
+	case configs.Infall, configs.Scatter, configs.Inspiral:
+		return with(runBurst, planBurst), nil
+	case configs.Table:
+		return with(runTable, planTable), nil
+	}
+	return engine{}, fmt.Errorf("orbit.kind %s is not available in this version", c.Orbit.Kind)
+}
+
 // Run evolves the case and certifies its numbers. The error wraps the
 // context's when that ends first, and is an *evolve.Failure when the evolution
 // breaks down.
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
-	switch {
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
-		return runKerrCircular(ctx, c, o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
-		return runKerrBound(ctx, c, o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return runCircular(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return runBound(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
-		return runBurst(ctx, c, choose(c), o)
-	case c.Pulse != nil:
-		return runPulse(ctx, c, o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
-		return runTable(ctx, c, choose(c), o)
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.run(ctx, c, o)
 }
-
-// transients are the kinds of orbit that come and go, or plunge.
-func transients() []string { return []string{configs.Infall, configs.Scatter, configs.Inspiral} }
 
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
-	switch {
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
-		return planKerrCircular(c)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
-		return planKerrBound(c)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return planCircular(c, choose(c))
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return planBound(c, choose(c))
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
-		return planBurst(c, choose(c))
-	case c.Pulse != nil:
-		return planPulse(c)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Table && c.Waves.Equation == configs.Master:
-		return planTable(c, choose(c))
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains(transients(), c.Orbit.Kind):
-		return planBurst(c, choose(c))
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.plan(c)
 }
 
 // conventions are what the tool states in every result.
