@@ -519,8 +519,11 @@ func (r *burstRun) entry(m *ladder, rung int) result.Mode {
 		L: m.l, M: m.m, Parity: m.parity.String(), Measure: total, Counts: counts, Infinity: at(f[certify.Infinity]),
 		Met: m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
-			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "outside the range": f[0].energyBar.Range, "round-off": f[0].energyBar.RoundOff,
+			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "round-off": f[0].energyBar.RoundOff,
 		},
+	}
+	if r.open[0] || r.open[1] {
+		out.Budget["outside the range"] = f[0].energyBar.Range
 	}
 	if !r.falls {
 		out.Horizon = at(f[certify.Horizon])
@@ -581,32 +584,13 @@ func checkBurst(c *configs.Case) []configs.Problem {
 	}
 	switch c.Orbit.Kind {
 	case configs.Infall, configs.Scatter, configs.Inspiral:
-		w, err := burstPath(c)
+		_, err := burstPath(c)
 		if err != nil {
 			return refusal(err)
 		}
 		if c.Orbit.Kind == configs.Infall && c.Orbit.From <= 3.5 {
 			return []configs.Problem{{Key: "orbit.from", Value: c.Orbit.From, Want: "a start radius above 3.5: from there on the particle is at the light ring (r = 3) before its source could be switched on"}}
 		}
-		if c.Span.Until == nil {
-			return nil
-		}
-		// The event, and some of what follows it.
-		var s worldline.State
-		event := eventTime(w)
-		w.At(event, &s)
-		if least := event - math.Max(s.Rstar, 0) + 60; *c.Span.Until < least {
-			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
-				"at least %.0f: the waves of the %s arrive around u = %.0f (or leave span out)", math.Ceil(least), eventName(w), least-60)}}
-		}
 	}
 	return nil
-}
-
-// eventName is what eventTime finds, in words.
-func eventName(w worldline.Worldline) string {
-	if w.Kind() == configs.Scatter {
-		return "passage through periastron"
-	}
-	return "plunge"
 }
