@@ -124,8 +124,10 @@ func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error
 	switch {
 	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
 		return runKerrCircular(ctx, c, o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrSteady(c.Orbit.Kind):
 		return runKerrBound(ctx, c, o)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Infall:
+		return runKerrFall(ctx, c, o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return runCircular(ctx, c, choose(c), o)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
@@ -141,8 +143,10 @@ func MakePlan(c *configs.Case) (*Plan, error) {
 	switch {
 	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
 		return planKerrCircular(c)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrKind(c.Orbit.Kind):
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrSteady(c.Orbit.Kind):
 		return planKerrBound(c)
+	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Infall:
+		return planKerrFall(c)
 	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
 		return planCircular(c, choose(c))
 	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
