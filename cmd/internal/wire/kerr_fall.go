@@ -138,7 +138,7 @@ func newKerrFall(c *configs.Case, o Options) (*kerrFall, error) {
 	ms, top := kerrMs(c, false)
 	for _, m := range ms {
 		if m >= 0 {
-			r.ms = append(r.ms, &kerrBurst{m: m, asked: top[m], last: top[m], rung: 1, runs: map[int]*blockRun{}})
+			r.ms = append(r.ms, &kerrBurst{m: m, asked: top[m], last: max(top[m], lowest(m)+2), rung: 1, runs: map[int]*blockRun{}})
 		}
 	}
 	return r, nil
@@ -156,9 +156,15 @@ func (r *kerrFall) mark() error {
 	isco, ring := h.ISCO(), h.LightRing()
 	top, before := 0.0, math.Inf(1)
 	for i, k := range track.States {
-		t := track.Start + float64(i)*track.Step
-		if k.Rho < r.n.domain.Layers.Ri {
-			r.markers[worldline.MarkHorizon] = t // where the layer begins; v = t + r_* labels what follows
+		y := k.R - h.OuterHorizon()
+		if y <= 0 {
+			break
+		}
+		// In the layer below slices are those of v = tau + rho = t + r_*.
+		rs := h.Tortoise(y)
+		t := track.Start + float64(i)*track.Step + k.Rho - rs
+		if rs < worldline.HorizonApproach {
+			r.markers[worldline.MarkHorizon] = t
 			break
 		}
 		p, d := r.path.energy*(k.R*k.R+a*a)-a*r.path.angmom, k.R*k.R-2*k.R+a*a
