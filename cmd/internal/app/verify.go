@@ -39,7 +39,7 @@ func (c *command) verify(cmd *cobra.Command) error {
 		}
 		stage := fmt.Sprintf("case %d of %d", i+1, n)
 		m.update(stage, float64(i), float64(n))
-		return c.engine.Run(ctx, kase, wire.Options{
+		b, err := c.engine.Run(ctx, kase, wire.Options{
 			Workers: c.workers,
 			Progress: func(p wire.Progress) {
 				if p.Total > 0 {
@@ -47,6 +47,10 @@ func (c *command) verify(cmd *cobra.Command) error {
 				}
 			},
 		})
+		if err == nil && kase.Waves.Equation == configs.Teukolsky && c.engine.SecondOpinion != nil {
+			err = c.engine.SecondOpinion(ctx, kase, b.Result, c.workers)
+		}
+		return b, err
 	}
 	outcome, err := verify.Run(cmd.Context(), c.checks, run, c.long)
 	m.stop()

@@ -56,6 +56,7 @@ func Checks() []Check {
 	all = append(all, sourceChecks()...)
 	all = append(all, extractionChecks()...)
 	all = append(all, barChecks()...)
+	all = append(all, kerrChecks()...)
 	return all
 }
 

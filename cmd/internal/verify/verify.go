@@ -25,7 +25,7 @@ const Schema = "nullmark.verification/1"
 
 // A Check is one published number and the way to find it with this tool.
 type Check struct {
-	Group     string  // "equation", "slicing", "source", "extraction" or "error bars"
+	Group     string  // "equation", "slicing", "source", "extraction", "error bars" or "Kerr"
 	Name      string  // what is compared, with its place
 	Source    Source  // where Published comes from
 	Published float64 // the number there
@@ -73,7 +73,8 @@ type Outcome struct {
 	Checks  []Row   `json:"checks"`
 }
 
-// A Runner runs the shipped circular case with these changes. It is the i-th of
+// A Runner runs the shipped circular case with these changes, with the second
+// opinion where the equation is teukolsky. It is the i-th of
 // n cases, counted from 0.
 type Runner func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error)
 
