@@ -10,12 +10,17 @@ var features = map[string]bool{
 	"orbit.kind " + Infall:        true,
 	"orbit.kind " + Scatter:       true,
 	"orbit.kind " + Inspiral:      true,
-	"orbit.kind " + Table:         false,
+	"orbit.kind " + Table:         true,
 	"waves.equation " + Master:    true,
 	"waves.equation " + Teukolsky: true,
-	"pulse":                       false,
+	pulsesTeukolsky:               true,
+	"pulse":                       true,
 	"model":                       true,
 }
+
+// pulsesTeukolsky is the Teukolsky equation for pulses, apart from its use for
+// particles.
+const pulsesTeukolsky = "waves.equation " + Teukolsky + " with pulse"
 
 // lacks reports whether the feature is known and switched off.
 func (r Reader) lacks(feature string) bool {

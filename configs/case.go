@@ -85,11 +85,13 @@ type Columns struct {
 	T, R, Phi, Theta, PR, PPhi, E, L string
 }
 
-// Pulse is initial data without a particle: a Gaussian in r_*.
+// Pulse is initial data without a particle: a Gaussian in r_*, or a pulse of the
+// same curvature that is zero beyond 4 widths.
 type Pulse struct {
 	Centre float64 `mapstructure:"centre"` // r_*, M
 	Width  float64 `mapstructure:"width"`  // M
 	Moving string  `mapstructure:"moving"` // "out", "in" or "static"
+	Shape  string  `mapstructure:"shape"`  // "gaussian" or "compact"
 }
 
 // Accuracy is what the user wants to reach.

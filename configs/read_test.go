@@ -225,6 +225,7 @@ func TestFeatures(t *testing.T) {
 		"orbit.kind " + Table:         "orbit: {kind: table, file: a.npz}",
 		"waves.equation " + Master:    good + "waves: {equation: master}",
 		"waves.equation " + Teukolsky: good + "waves: {equation: teukolsky}",
+		pulsesTeukolsky:               "pulse: {centre: 10, width: 2}\nwaves: {equation: teukolsky}",
 		"pulse":                       "pulse: {centre: 10, width: 2}",
 		"model":                       good + "model: {flux: {file: f.csv}}",
 	}

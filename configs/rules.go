@@ -133,6 +133,9 @@ func (r Reader) waves(s *sheet, set setting) {
 	spin, typedSpin := s.effective("hole.spin")
 	equation, typedEquation := s.effective("waves.equation")
 	feature := "waves.equation " + set.equation
+	if _, pulse := s.present["pulse"]; pulse && set.equation == Teukolsky {
+		feature = pulsesTeukolsky
+	}
 	switch {
 	case r.lacks(feature) && typedEquation:
 		s.say(equation.layer, equation.line, "waves.equation", set.equation, feature+" is not available in this version")

@@ -134,9 +134,11 @@ var schema = []key{
 	{path: "orbit.columns", form: columns, of: []string{Table},
 		doc: "Names of these quantities in the file where they differ, e.g. `{t: time, pphi: p_phi}`."},
 
-	{path: "pulse.centre", form: real, bounds: anywhere(), need: []string{always}, doc: "Centre of the Gaussian in r_*, M."},
+	{path: "pulse.centre", form: real, bounds: anywhere(), need: []string{always}, doc: "Centre of the pulse in r_*, M."},
 	{path: "pulse.width", form: real, bounds: above(0), need: []string{always}, doc: "Its width, M."},
 	{path: "pulse.moving", form: choice, choices: []string{"out", "in", "static"}, preset: "out", doc: "Where it goes at first."},
+	{path: "pulse.shape", form: choice, choices: []string{"gaussian", "compact"}, preset: "gaussian",
+		doc: "`gaussian`: exp(-z^2/2), z = (r_*-centre)/width; `compact`: the same curvature at the top and exactly zero from 4 widths on."},
 
 	{path: "accuracy.relative", form: real, bounds: inside(0, 1), preset: 1e-8,
 		doc: "Wanted relative error of each flux, and of strain against its peak; the tool picks the numerics."},

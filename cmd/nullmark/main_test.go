@@ -89,16 +89,17 @@ func TestSchedulingChangesNoBit(t *testing.T) {
 	want := numbers(t, one)
 	same(t, "two workers", want, numbers(t, two))
 
-	// Interrupted when half the work is done.
+	// Interrupted when two parts of several are finished.
 	ctx, cancel := context.WithCancel(bg)
 	defer cancel()
 	e := engine()
 	e.Run = func(ctx context.Context, c *configs.Case, o wire.Options) (*result.Bundle, error) {
-		o.Progress = func(p wire.Progress) {
-			if p.Done > p.Total/2 {
+		var parts, none atomic.Int32
+		o.Keep = counting{o.Keep, &none, &parts, func() {
+			if parts.Load() == 2 {
 				cancel()
 			}
-		}
+		}}
 		return wire.Run(ctx, c, o)
 	}
 	run(t, e, ctx, []int{app.ExitInterrupted}, "run", "--workers", "2", "--out", resumed)
@@ -108,7 +109,7 @@ func TestSchedulingChangesNoBit(t *testing.T) {
 
 	var loaded, saved atomic.Int32
 	e.Run = func(ctx context.Context, c *configs.Case, o wire.Options) (*result.Bundle, error) {
-		o.Keep = counting{o.Keep, &loaded, &saved}
+		o.Keep = counting{o.Keep, &loaded, &saved, func() {}}
 		return wire.Run(ctx, c, o)
 	}
 	run(t, e, bg, done, "run", "--resume", "--out", resumed)
@@ -130,6 +131,7 @@ func TestSchedulingChangesNoBit(t *testing.T) {
 type counting struct {
 	wire.Keeper
 	loaded, saved *atomic.Int32
+	kept          func() // called when a part has been saved
 }
 
 func (k counting) Load(key string) ([]byte, bool) {
@@ -141,6 +143,8 @@ func (k counting) Load(key string) ([]byte, bool) {
 }
 
 func (k counting) Save(key string, data []byte) error {
+	err := k.Keeper.Save(key, data)
 	k.saved.Add(1)
-	return k.Keeper.Save(key, data)
+	k.kept()
+	return err
 }

@@ -10,14 +10,18 @@ type Budget struct {
 	Discretisation float64
 	Transient      float64
 	RoundOff       float64
+	Range          float64 // what an extrapolation beyond the evolved range leaves open
 }
 
 // Bar is the sum of the parts.
-func (b Budget) Bar() float64 { return b.Discretisation + b.Transient + b.RoundOff }
+func (b Budget) Bar() float64 { return b.Discretisation + b.Transient + b.RoundOff + b.Range }
 
-// Largest names the largest part: "discretisation", "transient" or "round-off".
+// Largest names the largest part: "discretisation", "transient", "round-off" or
+// "part outside the range".
 func (b Budget) Largest() string {
 	switch {
+	case b.Range > b.Discretisation && b.Range > b.Transient && b.Range > b.RoundOff:
+		return "part outside the range"
 	case b.Discretisation >= b.Transient && b.Discretisation >= b.RoundOff:
 		return "discretisation"
 	case b.Transient >= b.RoundOff:

@@ -69,13 +69,13 @@ func TestBudget(t *testing.T) {
 		b    Budget
 		want string
 	}{
-		{Budget{3, 2, 1}, "discretisation"}, {Budget{1, 3, 2}, "transient"}, {Budget{1, 2, 3}, "round-off"},
-		{Budget{2, 2, 2}, "discretisation"}, {Budget{1, 2, 2}, "transient"},
+		{Budget{3, 2, 1, 0}, "discretisation"}, {Budget{1, 3, 2, 0}, "transient"}, {Budget{1, 2, 3, 0}, "round-off"},
+		{Budget{2, 2, 2, 0}, "discretisation"}, {Budget{1, 2, 2, 0}, "transient"}, {Budget{1, 2, 2, 3}, "part outside the range"},
 	} {
 		if got := c.b.Largest(); got != c.want {
 			t.Errorf("%+v: %s, want %s", c.b, got, c.want)
 		}
-		if got := c.b.Bar(); got != c.b.Discretisation+c.b.Transient+c.b.RoundOff {
+		if got := c.b.Bar(); got != c.b.Discretisation+c.b.Transient+c.b.RoundOff+c.b.Range {
 			t.Errorf("%+v: bar %g", c.b, got)
 		}
 	}

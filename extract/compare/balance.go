@@ -6,14 +6,19 @@ import (
 	"math/cmplx"
 	"strings"
 
+	"nullmark/extract/flux"
 	"nullmark/extract/result"
 )
 
 // Force is what a model's dynamics lose, against the particle's time T: rates
 // (dE/dt of the orbit, or the loss itself: the sign is read off) or, where a
-// rate is nil, the constants themselves, which are differentiated.
+// rate is nil, the constants themselves, which are differentiated. Rates are in
+// the units of fluxes, (mu/M)^2 and mu^2/M; constants are per mu and mu M, so
+// that their rates are the fluxes' times MassRatio = mu/M, which must be above
+// zero for them.
 type Force struct {
 	File                   string
+	MassRatio              float64
 	T                      []float64
 	EnergyRate, AngMomRate []float64
 	Energy, AngMom         []float64
@@ -58,12 +63,29 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 			}
 		}
 	}
+	res := ref.Result
+	drifts := res.Orbit != nil && (res.Orbit.Kind == "inspiral" || res.Orbit.Kind == "table" && !(res.Orbit.Numbers["period_r"] > 0))
+	if drifts { // the loss at t = u is wanted as well
+		lo, hi = math.Max(lo, f.T[0]), math.Min(hi, f.T[len(f.T)-1])
+	}
+	plunges := ""
+	if o := res.Orbit; o != nil {
+		if isco, ok := o.Markers["isco"]; ok && o.Markers["light_ring"] > isco {
+			if at, ok := ret.at(isco); ok && at < hi {
+				hi = at
+				plunges = "The balance ends where the last stable orbit is crossed: in the plunge what is lost leaves the near field later. "
+			}
+		}
+	}
 	a, b := 0, len(s.U)
 	for a < b && s.U[a] < lo {
 		a++
 	}
 	for b > a && s.U[b-1] > hi {
 		b--
+	}
+	if b-a < taps && plunges != "" {
+		return nil, &InputError{What: "the reference holds too little of the inspiral before the last stable orbit (after its start-up) to set a force against the fluxes", Remedy: "start it further out (orbit.from), or leave model.force out"}
 	}
 	if b-a < taps {
 		return nil, &InputError{What: fmt.Sprintf("the model's force (t = %s … %s) and the reference (u = %s … %s) have no time in common", short(f.T[0]), short(f.T[len(f.T)-1]), short(s.U[0]), short(s.U[len(s.U)-1])),
@@ -74,7 +96,6 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 	path.resampleReal(t, u, ret.a.t)
 	dtdu := slope(u, t)
 	e, l := infinityFlux(s, a, b)
-	res := ref.Result
 	rate := res.Total != nil && res.Total.Measure == "rate"
 	note := "Losses and fluxes are per unit of u; "
 	if hor != nil {
@@ -99,6 +120,13 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 				constant(l, x.AngularMomentum)
 			}
 		}
+	}
+	if !rate && tailInL(s, a, b, e, l) {
+		note += "The modes beyond the largest l are estimated at each time from how the flux falls with l. "
+	}
+	note += plunges
+	if drifts {
+		note += "To which time of the orbit a wave belongs is known to about r_* only: the difference between the losses at t = u and at t - r_* = u is part of the bar. "
 	}
 	out := &result.Balance{Range: &[2]float64{u[0], u[len(u)-1]}}
 	bound := res.Orbit != nil && res.Orbit.Kind != "circular" && res.Orbit.Kind != "inspiral"
@@ -125,7 +153,14 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 	} {
 		rates := k.rates
 		if rates == nil && k.from != nil {
+			if !(f.MassRatio > 0) {
+				return nil, &InputError{What: "the model's force gives the orbit's " + k.what + " per mu, whose rate is the flux times the mass ratio, and no mass ratio is known",
+					Remedy: "write model.mass_ratio"}
+			}
 			rates = slope(f.T, k.from)
+			for i := range rates {
+				rates[i] /= f.MassRatio
+			}
 		}
 		if rates == nil {
 			continue
@@ -135,6 +170,12 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 		for i := range loss {
 			loss[i] *= dtdu[i]
 			miss[i] *= math.Abs(dtdu[i])
+		}
+		if drifts {
+			at, _ := f.sample(rates, u)
+			for i := range loss {
+				miss[i] += math.Abs(loss[i] - at[i])
+			}
 		}
 		lossMean, measuredMean := mean(u[:window], loss, miss), meanQ(u[:window], k.measured)
 		if rate && res.Total.Infinity != nil { // certified, and with the sum's tail
@@ -151,6 +192,9 @@ func (f *Force) balance(ref *result.Bundle, tortoise func(float64) float64, mast
 				loss[i] = -loss[i]
 			}
 			lossMean.Value = -lossMean.Value
+		}
+		if q := f.MassRatio; k.rates != nil && q > 0 && q < 0.1 && math.Abs(lossMean.Value/(q*measuredMean.Value)-1) < 0.3 {
+			note += fmt.Sprintf("The %s rate is about the mass ratio times the measured flux: it looks as if it were per mu and not in units of (mu/M)^2; nothing was changed. ", k.what)
 		}
 		step := (len(u) + mostShown - 1) / mostShown
 		for i := 0; i < len(u); i += step {
@@ -307,6 +351,61 @@ func infinityFlux(s *result.Series, a, b int) (e, l []result.Q) {
 		addFlux(ax, d, rough, m.Wave, m.WaveErr, float64(m.M), both/(16*math.Pi), a, b, e, l)
 	}
 	return e, l
+}
+
+// tailInL adds to the fluxes of samples a … b-1 what the l beyond the largest
+// add, estimated sample by sample, where all m > 0 of every l up to it are
+// there and fall off; otherwise it adds nothing and returns false.
+func tailInL(s *result.Series, a, b int, e, l []result.Q) bool {
+	has := map[[2]int]bool{}
+	top := 0
+	for _, m := range s.Modes {
+		has[[2]int{m.L, m.M}] = true
+		top = max(top, m.L)
+	}
+	for l := 2; l <= top; l++ {
+		for m := 1; m <= l; m++ {
+			if !has[[2]int{l, m}] {
+				return false
+			}
+		}
+	}
+	n := b - a
+	eL, lL := make([][]result.Q, top-1), make([][]result.Q, top-1)
+	for k := range eL {
+		part := &result.Series{U: s.U}
+		for _, m := range s.Modes {
+			if m.L == k+2 {
+				part.Modes = append(part.Modes, m)
+			}
+		}
+		eL[k], lL[k] = infinityFlux(part, a, b)
+	}
+	var restE, restL []result.Q
+	row := make([]float64, top-1)
+	for i := 0; i < n; i++ {
+		for _, k := range []struct {
+			by  [][]result.Q
+			dst *[]result.Q
+		}{{eL, &restE}, {lL, &restL}} {
+			for j := range row {
+				row[j] = k.by[j][i].Value
+			}
+			q, ok := flux.Tail(row, 0)
+			if !ok {
+				return false
+			}
+			*k.dst = append(*k.dst, q)
+		}
+	}
+	for i := range restE {
+		e[i], l[i] = plus(e[i], restE[i]), plus(l[i], restL[i])
+	}
+	return true
+}
+
+func plus(a, b result.Q) result.Q {
+	return result.Q{Value: a.Value + b.Value, Error: a.Error + b.Error}
 }
 
 // addFlux adds weight |h'|^2 and weight m Im(h conj(h')) of one mode. An error

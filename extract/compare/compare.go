@@ -12,6 +12,7 @@ package compare
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 	"path/filepath"
 
 	"nullmark/extract/result"
@@ -87,11 +88,14 @@ func Compare(in Input) (*result.Comparison, *result.Curves, error) {
 		}
 	}
 	t := in.Reference.Result.Total
-	if (in.Flux != nil && in.Flux.Rows == nil || in.Force != nil) && t != nil && t.Measure == "rate" && t.Truncation == nil {
+	if (in.Flux != nil && in.Flux.Rows == nil || in.Force != nil) && t != nil && t.Truncation == nil {
 		c.Warnings = append(c.Warnings, "The reference's totals hold only the modes that were run, without an estimate of the others: a model's total flux or loss will lie above them.")
 	}
 	if in.Numbers != nil {
-		c.Numbers = numbers(in.Numbers, in.Reference.Result)
+		var apart bool
+		if c.Numbers, apart = numbers(in.Numbers, in.Reference.Result); apart {
+			c.Warnings = append(c.Warnings, "The radiated totals of the two results cover different stretches of u and are not set against each other; the waveforms are.")
+		}
 	}
 	return c, curves, nil
 }
@@ -229,8 +233,8 @@ func (w *waves) window(dt float64) error {
 // loaded is a mode of the model as strain on the model's own times.
 type loaded struct {
 	z       []complex128
-	own     []float64 // the model's own bar, nil where it has none
-	miss    []float64 // the error of converting it, nil where there is none
+	own     []float64    // the model's own bar, nil where it has none
+	miss    []complex128 // the error of integrating it, up to a linear function; nil where there is none
 	rounded float64
 }
 
@@ -288,7 +292,6 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 	}
 	p.model, p.readBar = make([]complex128, n), make([]float64, n)
 	w.times.resample(p.model, p.readBar, at, raw.z)
-	w.times.addBar(p.readBar, at, raw.miss)
 	if w.shift[1] != 0 {
 		si, co := math.Sincos(-float64(p.m) * w.shift[1])
 		for i := range p.model {
@@ -302,9 +305,17 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 			d[i] = p.model[i] - p.ref[i]
 		}
 		was := append([]complex128(nil), d...)
-		mid, off, drift = lessLinear(w.u, d, was, p.bars())
+		bars := p.bars()
+		mid, off, drift = lessLinear(w.u, d, was, bars)
 		for i := range d {
 			p.model[i] = p.ref[i] + d[i]
+		}
+		// The error of integrating goes through the same fit.
+		e, unused := make([]complex128, n), make([]float64, n)
+		w.times.resample(e, unused, at, raw.miss)
+		lessLinear(w.u, e, append([]complex128(nil), e...), bars)
+		for i := range e {
+			p.readBar[i] += cmplx.Abs(e[i])
 		}
 	}
 	if raw.rounded > 0 {
@@ -326,15 +337,15 @@ func (w *waves) pair(lm [2]int) (*pair, error) {
 	return p, nil
 }
 
-// marks are the marked times of a mode inside the compared range; peak is the
+// marks are the marked times of a mode, those of the orbit at u = t; peak is the
 // u of the reference's peak, NaN without one.
 func (w *waves) marks(peak float64) []marker {
 	out := []marker{{"start", w.u[0]}}
 	if o := w.in.Reference.Result.Orbit; o != nil {
 		for _, name := range sortedKeys(o.Markers) {
-			if u, ok := w.ret.at(o.Markers[name]); ok {
-				out = append(out, marker{name, u})
-			}
+			// The orbit's times are times t of the particle; as for all labels on
+			// waves, u = t stands for them.
+			out = append(out, marker{name, o.Markers[name]})
 		}
 	}
 	if !math.IsNaN(peak) {
@@ -353,9 +364,7 @@ func (w *waves) stages(peak float64) []stage {
 	isco, ring := math.Inf(-1), false
 	if o := w.in.Reference.Result.Orbit; o != nil {
 		if t, ok := o.Markers["isco"]; ok {
-			if u, ok := w.ret.at(t); ok {
-				isco = u
-			}
+			isco = t
 		}
 		_, ring = o.Markers["light_ring"]
 	}

@@ -97,8 +97,8 @@ func (c Convention) factor(l, m int) float64 {
 // toStrain turns the file's numbers of one mode, sampled on a, into r h_lm/mu
 // in place; for curvature the result lacks a linear function of time. The
 // second result, nil but for curvature, is the error of integrating: the
-// distance to what two samples fewer give, less its own linear part.
-func (c Convention) toStrain(l, m int, a axis, z []complex128) []float64 {
+// distance to what two samples fewer give, with a linear function of its own.
+func (c Convention) toStrain(l, m int, a axis, z []complex128) []complex128 {
 	f := complex(c.factor(l, m), 0)
 	for i, x := range z {
 		if c.Phase == "plus" {
@@ -114,12 +114,7 @@ func (c Convention) toStrain(l, m int, a axis, z []complex128) []float64 {
 		z[i] = 2 * h[i]
 		e[i] = z[i] - 2*e[i]
 	}
-	lessLinear(a.t, e, e, nil)
-	miss := make([]float64, len(e))
-	for i, x := range e {
-		miss[i] = cmplx.Abs(x)
-	}
-	return miss
+	return e
 }
 
 // lessLinear subtracts from z the linear function of t that fits ref best, with

@@ -197,9 +197,11 @@ func rowsOf(r *result.Result) ([]FluxRow, error) {
 }
 
 // numbers sets the certified numbers of two results against each other. The
-// bars of both count.
-func numbers(model, ref *result.Result) []result.NumberPair {
-	var out []result.NumberPair
+// bars of both count. Totals over different stretches of u, which apart
+// reports, are left out.
+func numbers(model, ref *result.Result) (out []result.NumberPair, apart bool) {
+	const stretch = "totals" // the convention that names it
+	apart = model.Conventions[stretch] != ref.Conventions[stretch]
 	add := func(name string, a, b result.Q) {
 		d := less(a, b)
 		v := result.Inside
@@ -211,15 +213,15 @@ func numbers(model, ref *result.Result) []result.NumberPair {
 		}
 		out = append(out, result.NumberPair{Name: name, Model: a, Reference: b, Difference: d, Verdict: v})
 	}
-	flux := func(name string, a, b *result.Flux) {
-		if a != nil && b != nil {
+	flux := func(name, measure string, a, b *result.Flux) {
+		if a != nil && b != nil && !(apart && measure == "total") {
 			add("energy "+name, a.Energy, b.Energy)
 			add("angular momentum "+name, a.AngularMomentum, b.AngularMomentum)
 		}
 	}
-	if model.Total != nil && ref.Total != nil {
-		flux("at infinity, all modes", model.Total.Infinity, ref.Total.Infinity)
-		flux("into the horizon, all modes", model.Total.Horizon, ref.Total.Horizon)
+	if model.Total != nil && ref.Total != nil && model.Total.Measure == ref.Total.Measure {
+		flux("at infinity, all modes", ref.Total.Measure, model.Total.Infinity, ref.Total.Infinity)
+		flux("into the horizon, all modes", ref.Total.Measure, model.Total.Horizon, ref.Total.Horizon)
 	}
 	for i := range ref.Modes {
 		b := &ref.Modes[i]
@@ -228,8 +230,8 @@ func numbers(model, ref *result.Result) []result.NumberPair {
 			continue
 		}
 		name := modeName(b.L, b.M)
-		flux("at infinity, "+name, a.Infinity, b.Infinity)
-		flux("into the horizon, "+name, a.Horizon, b.Horizon)
+		flux("at infinity, "+name, b.Measure, a.Infinity, b.Infinity)
+		flux("into the horizon, "+name, b.Measure, a.Horizon, b.Horizon)
 		if a.Strain != nil && b.Strain != nil {
 			add("strain, real part, "+name, a.Strain.Re, b.Strain.Re)
 			add("strain, imaginary part, "+name, a.Strain.Im, b.Strain.Im)
@@ -240,5 +242,5 @@ func numbers(model, ref *result.Result) []result.NumberPair {
 			add("frequency at the peak, "+name, a.Peak.Frequency, b.Peak.Frequency)
 		}
 	}
-	return out
+	return out, apart
 }

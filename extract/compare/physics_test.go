@@ -1,6 +1,7 @@
 package compare
 
 import (
+	"fmt"
 	"math"
 	"math/cmplx"
 	"path/filepath"
@@ -109,9 +110,13 @@ func TestBalanceOfCircularOrbit(t *testing.T) {
 	loss := 6.150372549041e-5 + 1.259129423e-8
 	f = &Force{T: f.T}
 	for _, s := range f.T {
-		f.Energy = append(f.Energy, 0.96-loss*s)
-		f.AngMom = append(f.AngMom, 3.8-loss*math.Pow(10, 1.5)*s)
+		f.Energy = append(f.Energy, 0.96-0.25*loss*s)
+		f.AngMom = append(f.AngMom, 3.8-0.25*loss*math.Pow(10, 1.5)*s)
 	}
+	if _, _, err := Compare(Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f}); err == nil || !strings.Contains(err.Error(), "write model.mass_ratio") {
+		t.Errorf("constants without a mass ratio: %v", err)
+	}
+	f.MassRatio = 0.25
 	// Differentiating numbers near 1 at half a unit of time costs digits: the
 	// averages agree to 1e-10 of the flux, single samples to about 1e-11/1e-5.
 	c = mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f})
@@ -124,7 +129,7 @@ func TestBalanceOfCircularOrbit(t *testing.T) {
 // time of the same emission. On a slowly growing signal the two sides agree
 // only if du, dv and dt are told apart.
 func TestBalanceAtBothEnds(t *testing.T) {
-	b := &result.Bundle{Result: &result.Result{Orbit: &result.Orbit{Kind: "inspiral"}}, Series: &result.Series{U: grid(0, 400, 0.5), V: grid(0, 460, 0.5), HorizonPrefix: "psi"}}
+	b := &result.Bundle{Result: &result.Result{Orbit: &result.Orbit{Kind: "circular"}}, Series: &result.Series{U: grid(0, 400, 0.5), V: grid(0, 460, 0.5), HorizonPrefix: "psi"}}
 	path := func(t float64) float64 { return 20 - 0.02*t }
 	for _, x := range grid(-30, 500, 0.5) {
 		b.Series.T, b.Series.R = append(b.Series.T, x), append(b.Series.R, path(x))
@@ -162,6 +167,67 @@ func TestBalanceAtBothEnds(t *testing.T) {
 	c = mustCompare(t, Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f, MasterHorizon: true})
 	if c.Balance.Verdict != result.Differs || !strings.Contains(c.Balance.Sentence, "+1.00e-4") {
 		t.Error(c.Balance.Sentence)
+	}
+}
+
+// A driven inspiral balances up to the last stable orbit, with what is not known
+// of the time of emission in the bar and the largest l's tail added; a rate per
+// mu is noticed.
+func TestBalanceOfAnInspiral(t *testing.T) {
+	const isco, k, w = 300.0, 2e-4, 0.12
+	b := &result.Bundle{Result: &result.Result{Orbit: &result.Orbit{Kind: "inspiral", Markers: map[string]float64{"isco": isco, "light_ring": 380}},
+		Total: &result.Total{Measure: "total"}}, Series: &result.Series{U: grid(0, 450, 0.5)}}
+	for _, x := range grid(-30, 500, 0.5) {
+		b.Series.T, b.Series.R = append(b.Series.T, x), append(b.Series.R, 6)
+	}
+	// Amplitudes by l fall by ten in power: the sum over all l is 1.111… of l = 2.
+	for l := 2; l <= 5; l++ {
+		for m := 1; m <= l; m++ {
+			s := result.ModeSeries{L: l, M: m}
+			a := math.Pow(10, -float64(l-2)/2) / float64(m) / math.Sqrt(float64(l))
+			for _, u := range b.Series.U {
+				h := complex(a*math.Exp(k*u), 0) * cmplx.Exp(complex(0, -float64(m)*w*u))
+				s.Wave, s.WaveErr = append(s.Wave, h), append(s.WaveErr, 1e-12)
+			}
+			b.Series.Modes = append(b.Series.Modes, s)
+		}
+	}
+	f := &Force{T: b.Series.T, MassRatio: 1e-3}
+	r6 := hyperboloidal.TortoiseAt(6)
+	for _, x := range f.T {
+		e := math.Exp(2*k*(x-r6)) / (8 * math.Pi)
+		sum := 0.0
+		for l := 2; l <= 5; l++ {
+			for m := 1; m <= l; m++ {
+				a := math.Pow(10, -float64(l-2)/2) / float64(m) / math.Sqrt(float64(l))
+				sum += a * a * (float64(m*m)*w*w + k*k)
+			}
+		}
+		sum += sum / 1.111 * 1e-4 / 0.9
+		f.EnergyRate = append(f.EnergyRate, e*sum)
+	}
+	in := Input{Reference: b, Tortoise: hyperboloidal.TortoiseAt, Force: f}
+	bal := mustCompare(t, in).Balance
+	last := bal.Energy.U[len(bal.Energy.U)-1]
+	if bal.Verdict != result.Inside || last > isco-r6 || last < isco-r6-1 || !strings.Contains(bal.Note, "last stable orbit") || !strings.Contains(bal.Note, "beyond the largest l") {
+		t.Errorf("%s %s to u = %v", bal.Sentence, bal.Note, last)
+	}
+	// The label's bar is 2 k r_* of the loss.
+	q, loss := bal.Energy.Residual[100], bal.Energy.Model[100].Value
+	if want := loss * (math.Exp(2*k*r6) - 1); math.Abs(q.Error/want-1) > 0.01 || math.Abs(q.Value) > 1e-6*loss {
+		t.Errorf("residual %v, want the bar %v", q, want)
+	}
+	for i := range f.EnergyRate {
+		f.EnergyRate[i] *= 0.95
+	}
+	if bal = mustCompare(t, in).Balance; bal.Verdict != result.Differs || !strings.Contains(bal.Sentence, "energy by -5") {
+		t.Errorf("%s", bal.Sentence)
+	}
+	for i := range f.EnergyRate {
+		f.EnergyRate[i] *= 1e-3 / 0.95
+	}
+	if bal = mustCompare(t, in).Balance; !strings.Contains(bal.Note, "as if it were per mu") {
+		t.Errorf("%s", bal.Note)
 	}
 }
 
@@ -247,6 +313,14 @@ func TestTwoResults(t *testing.T) {
 	}
 	if len(c.Numbers) != 2 || c.Numbers[0].Verdict != result.Inside || c.Numbers[1].Verdict != result.Differs || math.Abs(c.Numbers[0].Difference.Error-2e-3) > 1e-15 {
 		t.Errorf("%+v", c.Numbers)
+	}
+	// Totals over other stretches of time say nothing about each other.
+	for i, r := range []*result.Result{a.Result, b.Result} {
+		r.Modes[0].Measure = "total"
+		r.Conventions = map[string]string{"totals": fmt.Sprint("from u = ", i)}
+	}
+	if c = mustCompare(t, Input{Reference: b, Model: w, Numbers: a.Result}); len(c.Numbers) != 0 || !strings.Contains(strings.Join(c.Warnings, " "), "different stretches") {
+		t.Errorf("%+v %q", c.Numbers, c.Warnings)
 	}
 }
 

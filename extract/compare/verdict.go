@@ -102,7 +102,7 @@ func (w *waves) verdict(p *pair, mc *result.ModeComparison, worst, first int, st
 	switch {
 	case s > found:
 		mc.Verdict = result.Differs
-		mc.Sentence = fmt.Sprintf("%s differs: %s. %s.", name, strings.Join(w.parts(p, mc), "; "), w.when(p, first, stages))
+		mc.Sentence = fmt.Sprintf("%s differs: %s. %s.", name, strings.Join(w.parts(p, mc, first), "; "), w.when(p, first, stages))
 	case s > 1 && readRel > refRel, s > quiet && readRel > math.Max(refRel, asked):
 		mc.Verdict = result.CannotTell
 		mc.Sentence = fmt.Sprintf("%s cannot be told: the model's samples are too far apart or too coarsely rounded (reading them adds a bar of %s of the peak, the reference's own is %s); write the model more finely.",
@@ -162,7 +162,7 @@ func parse(s string) float64 {
 }
 
 // parts says by how much phase and amplitude differ.
-func (w *waves) parts(p *pair, mc *result.ModeComparison) []string {
+func (w *waves) parts(p *pair, mc *result.ModeComparison, first int) []string {
 	var out []string
 	if d := mc.PhaseDifference; d != nil && beyond(d.Max) {
 		switch shape(p.u, p.curves.Phase, p.curves.PhaseBar, d) {
@@ -175,7 +175,11 @@ func (w *waves) parts(p *pair, mc *result.ModeComparison) []string {
 			}
 			out = append(out, text)
 		default:
-			out = append(out, fmt.Sprintf("its phase is off by up to %s rad", withBar(d.Max)))
+			text := fmt.Sprintf("its phase is off by up to %s rad", withBar(d.Max))
+			if late := after(p, first); late != nil {
+				text = fmt.Sprintf("its phase drifts by %s rad per M from about u = %s on, to %s rad", withBar(late.Slope), short(p.u[first]), withBar(d.Max))
+			}
+			out = append(out, text)
 		}
 	}
 	if d := mc.AmplitudeDifference; d != nil && beyond(d.Max) {
@@ -197,10 +201,32 @@ func (w *waves) parts(p *pair, mc *result.ModeComparison) []string {
 			out = append(out, what+"up to "+plain(math.Abs(d.Max.Value))+" ± "+barText(d.Max.Error)+of)
 		}
 	}
+	if mc.Peak != nil && beyond(mc.Peak.Difference.U) {
+		d, way := mc.Peak.Difference.U, "late"
+		if d.Value < 0 {
+			way = "early"
+		}
+		out = append(out, fmt.Sprintf("its peak comes %s ± %s M %s", plain(math.Abs(d.Value)), barText(d.Error), way))
+	}
 	if len(out) == 0 {
 		out = append(out, fmt.Sprintf("model and reference are up to %s error bars apart, phase and amplitude taken together", short2(mc.Significance)))
 	}
 	return out
+}
+
+// after is the phase difference from sample first on where that is a straight
+// line over at least a tenth of the samples, else nil.
+func after(p *pair, first int) *result.Difference {
+	n := len(p.u)
+	if first <= 0 || n-first < max(n/10, taps) {
+		return nil
+	}
+	u, y, b := p.u[first:], p.curves.Phase[first:], p.curves.PhaseBar[first:]
+	d := condense(u, y, b, nil, nil)
+	if d == nil || shape(u, y, b, d) != drifts || !beyond(d.Slope) {
+		return nil
+	}
+	return d
 }
 
 type form int

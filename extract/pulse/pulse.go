@@ -49,7 +49,10 @@ type Outcome struct {
 	Fit     *ringing.Fit // amplitudes, phases, windows; nil without ringing
 	Tail    *result.Tail
 	Index   *tail.Fit // local index and windows; nil without a tail
-	Rungs   float64   // share of the fundamental's bar that comes from the rungs' difference, absolute
+	// Tones is the sum of the fitted modes at the samples of Fine.Psi, NaN before
+	// the fit begins; nil without ringing.
+	Tones []complex128
+	Rungs float64 // share of the fundamental's bar that comes from the rungs' difference, absolute
 	// Error is the bar of each sample of Fine.Psi.
 	Error    []float64
 	Warnings []string
@@ -85,6 +88,7 @@ func Measure(p Place, w Wanted) Outcome {
 			o.Warnings = append(o.Warnings, name+": "+err.Error())
 		} else {
 			o.Fit, o.Ringing, o.Rungs = fit, fit.Ringing(p.Where), rungs
+			o.Tones = tones(p, fit)
 			for _, s := range fit.Warnings {
 				o.Warnings = append(o.Warnings, name+": "+s)
 			}
@@ -100,6 +104,26 @@ func Measure(p Place, w Wanted) Outcome {
 		}
 	}
 	return o
+}
+
+// tones samples the sum of the fitted modes like the field.
+func tones(p Place, fit *ringing.Fit) []complex128 {
+	integrals := 0
+	if p.Where == "infinity" { // there the fit is to the time derivative
+		integrals = 1
+	}
+	begin := fit.Begin()
+	if math.IsInf(begin, 1) {
+		return nil
+	}
+	out := make([]complex128, len(p.Fine.Psi))
+	for k := range out {
+		out[k] = cmplx.NaN()
+		if t := p.Fine.Start + float64(k)*p.Fine.Step; t >= begin {
+			out[k] = fit.Tones(t, integrals)
+		}
+	}
+	return out
 }
 
 // bars gives every sample of the field its error: what remains of the

@@ -197,7 +197,7 @@ func spinning() *result.Bundle {
 func pulse() *result.Bundle {
 	r := &result.Result{Title: "A pulse rings the hole",
 		Ringing:  []result.Ringing{{L: 2, M: 0, N: 0, Re: result.Q{Value: 0.3736716844, Error: 2e-9}, Im: result.Q{Value: -0.0889623157, Error: 3e-9}, Where: "infinity"}},
-		Tail:     []result.Tail{{L: 2, M: 0, Where: "infinity", Exponent: result.Q{Value: -4.002, Error: 0.004}}},
+		Tail:     []result.Tail{{L: 2, M: 0, Where: "infinity", Exponent: result.Q{Value: 4.002, Error: 0.004}}},
 		Accuracy: result.Accuracy{Asked: 1e-8, Met: true}}
 	s := &result.Series{Prefix: "psi"}
 	mode := result.ModeSeries{L: 2, M: 0}
@@ -206,7 +206,19 @@ func pulse() *result.Bundle {
 		mode.Wave = append(mode.Wave, complex(math.Exp(-0.0889623157*u)*math.Cos(0.3736716844*u)+0.02*math.Pow(u+40, -4), 0))
 		mode.WaveErr = append(mode.WaveErr, 1e-12)
 		mode.Evidence = append(mode.Evidence, 4e-13*(1.1+math.Sin(u)))
+		tone := complex(math.NaN(), math.NaN())
+		if u >= 20 {
+			tone = complex(math.Exp(-0.0889623157*u)*math.Cos(0.3736716844*u), 0)
+		}
+		mode.Tones = append(mode.Tones, tone)
 	}
+	local := result.LocalIndex{L: 2, M: 0, Where: "infinity"}
+	for u := 300.0; u < 600; u *= 1.02 {
+		local.Times = append(local.Times, u)
+		local.Index = append(local.Index, 4*u/(u+40))
+		local.Error = append(local.Error, 1e-3*(u/300))
+	}
+	s.Decay = []result.LocalIndex{local}
 	s.Modes = []result.ModeSeries{mode}
 	return &result.Bundle{Result: r, Series: s}
 }

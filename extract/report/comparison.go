@@ -142,13 +142,19 @@ func pairHeads(text, unit string) []head {
 	return []head{{Text: text, Unit: unit, Num: true}, {Text: "bar", Unit: unit, Num: true}}
 }
 
+// alone writes a value whose bar stands in its brackets only.
+func alone(cells []cell, q *result.Q, n notation) []cell {
+	all := value(cells, q, n)
+	return all[:len(all)-1]
+}
+
 func comparedModesTable(modes []result.ModeComparison) []table {
 	if len(modes) == 0 {
 		return nil
 	}
 	t := table{ID: "compared-modes", Caption: "Differences by mode, model minus reference", Heads: []head{{Text: "l"}, {Text: "m"}, {Text: "verdict"}}}
 	t.Heads = append(t.Heads, pairHeads("largest phase difference", "rad")...)
-	t.Heads = append(t.Heads, pairHeads("phase drift", "rad/M")...)
+	t.Heads = append(t.Heads, head{Text: "phase drift", Unit: "rad/M", Num: true})
 	t.Heads = append(t.Heads, pairHeads("largest amplitude difference", "relative")...)
 	t.Heads = append(t.Heads, head{Text: "largest, in bars", Num: true})
 	for i := range modes {
@@ -161,9 +167,8 @@ func comparedModesTable(modes []result.ModeComparison) []table {
 		if d := m.AmplitudeDifference; d != nil {
 			amp = &d.Max
 		}
-		for _, q := range []*result.Q{phase, drift, amp} {
-			r.Cells = value(r.Cells, q, scientific)
-		}
+		r.Cells = value(r.Cells, phase, scientific)
+		r.Cells = value(alone(r.Cells, drift, scientific), amp, scientific)
 		r.Cells = append(r.Cells, cell{tidyExponent(fmt.Sprintf("%.2g", m.Significance)), "num"})
 		t.Rows = append(t.Rows, r)
 	}
@@ -177,9 +182,8 @@ func peakTables(modes []result.ModeComparison) []table {
 			continue
 		}
 		t := table{ID: fmt.Sprintf("peak-%d-%d", m.L, m.M), Caption: "Maximum of |r h| of mode " + modeName(m.L, m.M), Heads: []head{{Text: "quantity"}}}
-		for _, h := range []string{"model", "reference", "difference"} {
-			t.Heads = append(t.Heads, pairHeads(h, "")...)
-		}
+		t.Heads = append(t.Heads, head{Text: "model", Num: true}, head{Text: "reference", Num: true})
+		t.Heads = append(t.Heads, pairHeads("difference", "")...)
 		for _, k := range []struct {
 			name string
 			of   func(*result.Peak) *result.Q
@@ -191,9 +195,9 @@ func peakTables(modes []result.ModeComparison) []table {
 			{"slope of the frequency (rad/M²)", func(p *result.Peak) *result.Q { return &p.FrequencySlope }},
 		} {
 			r := row{Heads: []string{k.name}}
-			for _, p := range []*result.Peak{&m.Peak.Model, &m.Peak.Reference, &m.Peak.Difference} {
-				r.Cells = value(r.Cells, k.of(p), readable)
-			}
+			r.Cells = alone(r.Cells, k.of(&m.Peak.Model), readable)
+			r.Cells = alone(r.Cells, k.of(&m.Peak.Reference), readable)
+			r.Cells = value(r.Cells, k.of(&m.Peak.Difference), readable)
 			t.Rows = append(t.Rows, r)
 		}
 		out = append(out, t)

@@ -221,7 +221,7 @@ func TestPageHoldsWhatTheResultHasInOrder(t *testing.T) {
 		"circular":     {"Total | Modes | Pictures | Conventions | Orbit | Resolutions | Warnings | Provenance | Loading the data", "orbit wave amplitude flux budget evidence"},
 		"plunge":       {"Total | Modes | Pictures | Conventions | Orbit | Loading the data", "orbit wave peak amplitude flux evidence"},
 		"spinning":     {"Total | Modes | Pictures", "flux"},
-		"pulse":        {"Ringing and decay | Pictures | Loading the data", "wave amplitude evidence"},
+		"pulse":        {"Ringing and decay | Pictures | Loading the data", "wave amplitude ringing decay evidence"},
 		"bare":         {"", ""},
 		"empty series": {"Loading the data", ""},
 	}

@@ -264,6 +264,15 @@ func recoilTable(r *result.Result) []table {
 	return []table{t}
 }
 
+func spectrumTable(r *result.Result) []table {
+	if r.Total == nil || r.Total.SpectrumPeak == nil {
+		return nil
+	}
+	t := table{ID: "spectrum-peak", Caption: "Where the energy spectrum is largest", Heads: []head{{Text: "number"}, {Text: "value", Unit: "1/M", Num: true}, {Text: "bar", Unit: "1/M", Num: true}}}
+	t.Rows = append(t.Rows, row{Heads: []string{"frequency ω"}, Cells: value(nil, r.Total.SpectrumPeak, readable)})
+	return []table{t}
+}
+
 func ringingTables(r *result.Result) []table {
 	var out []table
 	if len(r.Ringing) > 0 {

@@ -38,7 +38,7 @@ total  6.150372549(43)e-5    4.3e-13  1.2591294230(21)e-8    2.1e-17
 	if got := printed(t, plunge().Result, 80, false); !strings.Contains(got, "Asked accuracy met. Every mode reached") {
 		t.Errorf("no verdict in\n%s", got)
 	}
-	if got := printed(t, pulse().Result, 80, false); !strings.Contains(got, "0.3736716844(20)") || !strings.Contains(got, "-4.0020(40)") {
+	if got := printed(t, pulse().Result, 80, false); !strings.Contains(got, "0.3736716844(20)") || !strings.Contains(got, "4.0020(40)") {
 		t.Errorf("no ringing or decay in\n%s", got)
 	}
 }

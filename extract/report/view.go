@@ -154,7 +154,7 @@ func view(b *result.Bundle) page {
 	}
 	if t := r.Total; t != nil {
 		p.Totals = endsTable("total", "Total over all modes", measure, t.Infinity, t.Horizon)
-		p.Totals = level(append(p.Totals, recoilTable(r)...))
+		p.Totals = level(append(append(p.Totals, recoilTable(r)...), spectrumTable(r)...))
 		if tr := t.Truncation; tr != nil {
 			p.Truncation = endsTable("truncation", fmt.Sprintf("Estimated part beyond l = %d, already contained in the total", tr.LMax), measure, tr.Infinity, tr.Horizon)
 			level(p.Truncation)
@@ -199,6 +199,9 @@ func pictures(b *result.Bundle) []picture {
 		}
 		add(amplitudePicture(s))
 	}
+	add(spectrumPicture(r, b.Spectrum))
+	add(ringingPicture(r, s))
+	add(decayPicture(r, s))
 	add(fluxPicture(r))
 	add(budgetPicture(r))
 	add(evidencePicture(s))

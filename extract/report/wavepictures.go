@@ -280,7 +280,7 @@ func evidencePicture(s *result.Series) (picture, bool) {
 	if compared {
 		title = "Convergence: the difference between rungs"
 		desc = "For the strongest modes, the absolute difference between the two finest rungs against retarded time, on a logarithmic axis, over a band that reaches up to the claimed error bar."
-		caption = "Solid: absolute difference of " + waveName(s) + " between the two finest rungs. Dashed, with the band below it: the error bar claimed for the stored samples. The difference should stay inside the band."
+		caption = "Solid: absolute difference of " + waveName(s) + " between the two finest rungs. Dashed, with the band below it: the error bar claimed for the stored samples. The difference is about the error of the coarser of the two; the finer one’s is a tenth of that or less, where the scheme converges as it should."
 	}
 	c := newCanvas("evidence", pictureWidth, top+float64(len(modes))*(high+gap)+34, title, desc)
 	hatch := c.hatch()

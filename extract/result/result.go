@@ -80,6 +80,8 @@ type Total struct {
 	Horizon    *Flux       `json:"horizon,omitempty"`
 	Truncation *Truncation `json:"truncation,omitempty"`
 	Recoil     *Recoil     `json:"recoil,omitempty"`
+	// SpectrumPeak is the frequency, 1/M, of the largest dE/domega of a burst.
+	SpectrumPeak *Q `json:"spectrum_peak,omitempty"`
 }
 
 // Truncation is the estimate of what the modes beyond LMax would add.
@@ -200,6 +202,19 @@ type ModeSeries struct {
 	// Evidence is |difference of Wave between the two finest rungs|, the
 	// picture of convergence (nil where it was not kept).
 	Evidence []float64
+	// Tones is the sum of the fitted damped oscillations of a pulse, sampled
+	// like Wave, NaN before the fit begins; nil where none was fitted.
+	Tones []complex128
+}
+
+// LocalIndex is -d ln|psi|/d ln t of a pulse's decay at one place against the
+// time that belongs there (see Tail), with a bar at each time.
+type LocalIndex struct {
+	L, M  int
+	Where string // as in Tail
+	Times []float64
+	Index []float64
+	Error []float64
 }
 
 // Series are the sampled outputs of a run: U retarded time at null infinity,
@@ -208,15 +223,24 @@ type Series struct {
 	Prefix        string // "h" (strain) or "psi" (pulses)
 	U, V          []float64
 	Modes         []ModeSeries
-	T, R, Phi     []float64 // the particle; nil for pulses
-	JunkUntil     float64   // samples with u below this still carry the start-up
-	HorizonPrefix string    // name prefix of the horizon field, e.g. "psi"
+	Decay         []LocalIndex // pulses with a tail
+	T, R, Phi     []float64    // the particle; nil for pulses
+	JunkUntil     float64      // samples with u below this still carry the start-up
+	HorizonPrefix string       // name prefix of the horizon field, e.g. "psi"
+}
+
+// Spectrum is the energy spectrum of a burst at null infinity, summed over the
+// modes that were run, positive frequencies standing for both signs:
+// dE/domega in mu^2 against omega in 1/M, with absolute bars.
+type Spectrum struct {
+	Omega, Density, Err []float64
 }
 
 // Bundle is everything a run hands to storage and report.
 type Bundle struct {
-	Result *Result
-	Series *Series
+	Result   *Result
+	Series   *Series
+	Spectrum *Spectrum // nil where there is none
 }
 
 // Find returns the mode (l,m), or nil.

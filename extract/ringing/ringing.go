@@ -62,6 +62,7 @@ type Mode struct {
 type Fit struct {
 	Reference float64 // time of the largest |y|, to which amplitudes refer
 	Modes     []Mode  // own modes by N, then neighbours, then unnamed ones
+	Real      bool    // the series was real
 	Residual  float64 // rms of the best fit's residual over the largest |y|
 	Warnings  []string
 }

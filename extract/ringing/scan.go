@@ -57,7 +57,7 @@ func Analyse(s Series, o Options) (*Fit, error) {
 	if err != nil {
 		return nil, err
 	}
-	fit := &Fit{Reference: s.time(peak)}
+	fit := &Fit{Reference: s.time(peak), Real: s.isReal()}
 	from := fit.Reference + settle
 	to := s.time(len(s.Values) - 1)
 	if o.From != nil {

@@ -5,6 +5,7 @@ import (
 	"math"
 	"math/cmplx"
 	"sort"
+	"strings"
 
 	"nullmark/extract/result"
 )
@@ -142,10 +143,14 @@ func name(fit *Fit, o Options) {
 			fit.Warnings = append(fit.Warnings, fmt.Sprintf("(%d,%d) n = %d does not stand out of the signal: no fit holds it to %g of itself", o.L, o.M, n, tooVague))
 		}
 	}
+	var mixed []string
 	for _, m := range fit.Modes {
 		if m.Named && !m.Own {
-			fit.Warnings = append(fit.Warnings, fmt.Sprintf("the signal of (%d,%d) also carries (%d,%d) n = %d, with amplitude %.2g at the peak: fitted beside it, not averaged in", o.L, o.M, m.L, m.M, m.N, m.Amplitude.Value))
+			mixed = append(mixed, fmt.Sprintf("(%d,%d) n = %d with %.2g", m.L, m.M, m.N, m.Amplitude.Value))
 		}
+	}
+	if len(mixed) > 0 {
+		fit.Warnings = append(fit.Warnings, fmt.Sprintf("the signal of (%d,%d) also carries other tones, fitted beside its own and not averaged in; amplitudes at the peak: %s", o.L, o.M, strings.Join(mixed, ", ")))
 	}
 }
 

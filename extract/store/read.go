@@ -61,7 +61,11 @@ func Read(dir string) (*result.Bundle, []byte, error) {
 	if !wave && !horizon {
 		s = nil
 	}
-	return &result.Bundle{Result: r, Series: s}, caseYAML, nil
+	spectrum, err := readSpectrum(dir)
+	if err != nil {
+		return nil, nil, err
+	}
+	return &result.Bundle{Result: r, Series: s, Spectrum: spectrum}, caseYAML, nil
 }
 
 func readWhole(dir, name string) ([]byte, error) {
@@ -186,6 +190,36 @@ func (w whole) Read(p []byte) (int, error) {
 	return n, err
 }
 
+var decayName = regexp.MustCompile(`^index(|_t|_err)_(\d+)_(-?\d+)_([A-Za-z0-9_.]+)$`)
+
+// takeDecay puts an array of a local index, whose times come first, into s.
+func takeDecay(s *result.Series, a array) (fault string, ok bool) {
+	part := decayName.FindStringSubmatch(a.name)
+	if part == nil || a.reals == nil {
+		return "", false
+	}
+	l, errL := strconv.Atoi(part[2])
+	m, errM := strconv.Atoi(part[3])
+	if errL != nil || errM != nil {
+		return "", false
+	}
+	where := strings.ReplaceAll(part[4], "_", " ")
+	if part[1] == "_t" {
+		s.Decay = append(s.Decay, result.LocalIndex{L: l, M: m, Where: where, Times: a.reals})
+		return "", true
+	}
+	n := len(s.Decay) - 1
+	if n < 0 || s.Decay[n].L != l || s.Decay[n].M != m || s.Decay[n].Where != where {
+		return "comes without its times", true
+	}
+	if part[1] == "" {
+		s.Decay[n].Index = a.reals
+	} else {
+		s.Decay[n].Error = a.reals
+	}
+	return lengthFault(a, len(s.Decay[n].Times), decayKey("_t", &s.Decay[n])), true
+}
+
 var modeName = regexp.MustCompile(`^([A-Za-z]+)_(\d+)_(-?\d+)$`)
 
 // splitKey undoes key.
@@ -240,6 +274,9 @@ func takeWave(s *result.Series, a array) string {
 		s.Phi = a.reals
 		return lengthFault(a, len(s.T), "t_p")
 	}
+	if fault, ok := takeDecay(s, a); ok {
+		return fault
+	}
 	prefix, l, m, ok := splitKey(a.name)
 	switch {
 	case !ok:
@@ -248,6 +285,8 @@ func takeWave(s *result.Series, a array) string {
 		modeOf(s, l, m).WaveErr = a.reals
 	case prefix == evidencePrefix && a.reals != nil:
 		modeOf(s, l, m).Evidence = a.reals
+	case prefix == tonesPrefix && a.complex != nil:
+		modeOf(s, l, m).Tones = a.complex
 	case a.complex != nil:
 		s.Prefix = prefix
 		modeOf(s, l, m).Wave = a.complex

@@ -2,6 +2,7 @@ package store
 
 import (
 	"fmt"
+	"strings"
 
 	"nullmark/extract/result"
 )
@@ -12,10 +13,17 @@ func key(prefix string, l, m int) string { return fmt.Sprintf("%s_%d_%d", prefix
 const (
 	errPrefix      = "err"
 	evidencePrefix = "evidence"
+	tonesPrefix    = "tones"
+	indexPrefix    = "index" // and index_t, index_err
 	junkName       = "junk_until"
 	defaultWave    = "h"
 	defaultHorizon = "psi"
 )
+
+// decayKey names the arrays of a local index, e.g. index_t_2_1_radius_10.
+func decayKey(part string, d *result.LocalIndex) string {
+	return key(indexPrefix+part, d.L, d.M) + "_" + strings.ReplaceAll(d.Where, " ", "_")
+}
 
 func or(s, fallback string) string {
 	if s == "" {
@@ -69,6 +77,16 @@ func waveformArrays(s *result.Series) ([]array, error) {
 		if m.Evidence != nil {
 			c.add(array{name: key(evidencePrefix, m.L, m.M), reals: m.Evidence}, n, "u")
 		}
+		if m.Tones != nil {
+			c.add(array{name: key(tonesPrefix, m.L, m.M), complex: m.Tones}, n, "u")
+		}
+	}
+	for i := range s.Decay {
+		d := &s.Decay[i]
+		at := decayKey("_t", d)
+		c.add(array{name: at, reals: d.Times}, len(d.Times), at)
+		c.add(array{name: decayKey("", d), reals: d.Index}, len(d.Times), at)
+		c.add(array{name: decayKey("_err", d), reals: d.Error}, len(d.Times), at)
 	}
 	if s.T != nil {
 		c.add(array{name: "t_p", reals: s.T}, len(s.T), "t_p")

@@ -5,6 +5,7 @@
 //	waveform.npz   u, h_l_m, err_l_m, evidence_l_m, t_p, r_p, phi_p, junk_until
 //	horizon.npz    v, psi_l_m, err_l_m
 //	flux.csv       fluxes by mode and summed
+//	spectrum.csv   dE/domega of a burst
 //	report.html    a page made elsewhere
 //	SHA256SUMS     of the rest, as `sha256sum -c` reads it
 //
@@ -35,6 +36,7 @@ const (
 	waveformFile = "waveform.npz"
 	horizonFile  = "horizon.npz"
 	fluxFile     = "flux.csv"
+	spectrumFile = "spectrum.csv"
 	reportFile   = "report.html"
 	sumsFile     = "SHA256SUMS"
 	partialDir   = ".partial"
@@ -43,7 +45,7 @@ const (
 // own lists what may lie in a result directory and goes when it is replaced.
 func own(name string) bool {
 	switch name {
-	case caseFile, resultFile, waveformFile, horizonFile, fluxFile, reportFile, sumsFile, partialDir,
+	case caseFile, resultFile, waveformFile, horizonFile, fluxFile, spectrumFile, reportFile, sumsFile, partialDir,
 		"comparison.json", "comparison.html", "comparison.csv":
 		return true
 	}
@@ -54,7 +56,7 @@ func own(name string) bool {
 type Parts struct {
 	Waveform bool   // waveform.npz, when the bundle has a series at null infinity
 	Horizon  bool   // horizon.npz, when the bundle has a series at the horizon
-	Flux     bool   // flux.csv, when the result has fluxes
+	Flux     bool   // flux.csv, when the result has fluxes, and spectrum.csv, when the bundle has a spectrum
 	Report   []byte // report.html as it stands; nil = none
 }
 
@@ -180,6 +182,12 @@ func items(b *result.Bundle, caseYAML []byte, parts Parts) ([]item, error) {
 	if parts.Flux && hasFlux(r) {
 		out = append(out, item{fluxFile, func(w io.Writer) error { return writeFlux(w, r) }})
 	}
+	if parts.Flux && b.Spectrum != nil {
+		if err := checkSpectrum(b.Spectrum); err != nil {
+			return nil, err
+		}
+		out = append(out, item{spectrumFile, func(w io.Writer) error { return writeSpectrum(w, b.Spectrum) }})
+	}
 	if parts.Report != nil {
 		out = append(out, blob(reportFile, parts.Report))
 	}
@@ -285,7 +293,7 @@ func add(d disk, dir string, files map[string][]byte) (err error) {
 	names := make([]string, 0, len(files))
 	for name := range files {
 		switch {
-		case !plainName(name), slices.Contains([]string{caseFile, resultFile, waveformFile, horizonFile, fluxFile, sumsFile}, name):
+		case !plainName(name), slices.Contains([]string{caseFile, resultFile, waveformFile, horizonFile, fluxFile, spectrumFile, sumsFile}, name):
 			panic("store: " + name + " cannot be added to a result")
 		}
 		names = append(names, name)

@@ -38,7 +38,14 @@ func newSpline(t, v []float64) *spline {
 	// banded collocation matrix, totally positive: no pivoting is needed
 	width := 2*k + 1
 	band := make([]float64, n*width)
-	b := append([]float64(nil), v...)
+	// What is solved for is the departure from the chord: the rounding of the
+	// solution goes with its size, and an azimuth grows without end.
+	chord := (v[n-1] - v[0]) / (t[n-1] - t[0])
+	b := make([]float64, n)
+	for i := range b {
+		b[i] = math.FMA(-chord, t[i], v[i])
+	}
+	u := append([]float64(nil), b...)
 	var basis [splineCoef]float64
 	at := 0
 	for i := range n {
@@ -83,7 +90,7 @@ func newSpline(t, v []float64) *spline {
 			x := t[i] + h/2*(1+math.Cos(math.Pi*(float64(j)+0.5)/splineCoef))
 			bsplines(&basis, knots, at, x)
 			for m := range basis {
-				val[j] += basis[m] * (b[at-k+m] - v[i])
+				val[j] += basis[m] * (b[at-k+m] - u[i])
 			}
 		}
 		for m := range c {
@@ -92,7 +99,8 @@ func newSpline(t, v []float64) *spline {
 			}
 			c[m] *= 2.0 / splineCoef
 		}
-		c[0] /= 2
+		c[0] = c[0]/2 + chord*h/2
+		c[1] += chord * h / 2
 		s.coef[i] = c
 		var d [splineCoef + 2]float64
 		for m := splineCoef - 2; m >= 0; m-- {

@@ -72,6 +72,7 @@ type command struct {
 	quiet   bool
 	json    bool
 	long    bool
+	page    string
 	second  bool
 }
 
@@ -189,7 +190,7 @@ func visible(root *cobra.Command) []string {
 
 // caseFlags are the flags of commands that read a case.
 func (c *command) caseFlags(flags *pflag.FlagSet) {
-	flags.StringArrayVar(&c.sets, "set", nil, "change a key: `key.path=value` beats the file and the environment; repeatable")
+	flags.StringArrayVar(&c.sets, "set", nil, "one key of the case as `key.path=value`, which beats the file and the environment; repeatable")
 }
 
 // one wants exactly one argument.

@@ -485,7 +485,7 @@ func TestPlanShowsAndEvolvesNothing(t *testing.T) {
 func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	room(t)
 	check := verify.Check{Group: "equation", Name: "(2,2) energy", Source: verify.Source{Short: "invented", Full: "invented for this test"},
-		Published: 1e-4, Cases: [][]string{{"orbit.radius=7"}}, Ours: func(r []*result.Result) (result.Q, error) {
+		Published: 1e-4, Cases: []verify.Case{{Shipped: "circular.yaml", Changes: []string{"orbit.radius=7"}}}, Ours: func(r []*result.Result) (result.Q, error) {
 			return r[0].Find(2, 2).Infinity.Energy, nil
 		}}
 	do := func(args ...string) outcome {
@@ -500,6 +500,16 @@ func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 	if got := do("verify"); got.code != ExitNotMet || !strings.Contains(got.stdout, "FAIL") || got.stderr != "" {
 		t.Errorf("a changed value: exit %d: %s%s", got.code, got.stdout, got.stderr)
 	}
+	page := filepath.Join(t.TempDir(), "verify.html")
+	if got := do("verify", "--page", page); got.code != ExitNotMet {
+		t.Errorf("exit %d with a page: %s", got.code, got.stderr)
+	}
+	if text, err := os.ReadFile(page); err != nil || !strings.Contains(string(text), "invented for this test") || !strings.Contains(string(text), "1 of 1 checks FAILED") {
+		t.Errorf("%v: page\n%s", err, text)
+	}
+	if got := do("verify", "--page", filepath.Join(page, "below", "x.html")); got.code != ExitFiles || got.stdout != "" {
+		t.Errorf("a page into nowhere: exit %d: %s", got.code, got.stderr)
+	}
 	got := do("verify", "--json")
 	var o verify.Outcome
 	if err := json.Unmarshal([]byte(got.stdout), &o); err != nil || got.code != ExitNotMet || o.Passed || len(o.Checks) != 1 {
@@ -511,8 +521,8 @@ func TestVerifyExits1WhenOneValueIsChanged(t *testing.T) {
 func TestVerifysCasesAreGoodInput(t *testing.T) {
 	c := &command{engine: fake(nil)}
 	for _, check := range verify.Checks() {
-		for _, changes := range check.Cases {
-			if _, err := c.shipped("circular.yaml", changes); err != nil {
+		for _, v := range check.Cases {
+			if _, err := c.shipped(v.Shipped, v.Changes); err != nil {
 				t.Errorf("%s, %s: %v", check.Group, check.Name, err)
 			}
 		}

@@ -31,7 +31,7 @@ func TestREADMENamesEverything(t *testing.T) {
 		if sub.Name() == "help" || sub.Name() == "completion" {
 			continue
 		}
-		want("the command", "| `nullmark "+sub.Name()+" ")
+		want("the command", "| `"+sub.CommandPath())
 		sub.Flags().VisitAll(func(f *pflag.Flag) { want("a flag of "+sub.Name(), "`--"+f.Name) })
 	}
 	root.PersistentFlags().VisitAll(func(f *pflag.Flag) { want("a flag", "`--"+f.Name) })

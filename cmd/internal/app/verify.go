@@ -1,9 +1,12 @@
 package app
 
 import (
+	"bytes"
 	"context"
 	"encoding/json"
 	"fmt"
+	"os"
+	"path/filepath"
 
 	"github.com/spf13/cobra"
 
@@ -25,15 +28,21 @@ func (c *command) verifyCommand() *cobra.Command {
 		},
 		RunE: func(cmd *cobra.Command, _ []string) error { return c.verify(cmd) },
 	}
+	cmd.Flags().StringVar(&c.page, "page", "", "write the table to this `file` as well, as a page for a browser (verify.html)")
 	cmd.Flags().BoolVar(&c.long, "long", false, "run the slow checks as well")
 	return cmd
 }
 
 func (c *command) verify(cmd *cobra.Command) error {
+	if c.page != "" {
+		if info, err := os.Stat(filepath.Dir(c.page)); err != nil || !info.IsDir() {
+			return coded(ExitFiles, fmt.Errorf("--page %s: there is no directory %s to write the page into", c.page, filepath.Dir(c.page)))
+		}
+	}
 	m := newMeter(c.stderr, c.quiet)
 	defer m.stop()
-	run := func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error) {
-		kase, err := c.shipped("circular.yaml", changes)
+	run := func(ctx context.Context, vc verify.Case, i, n int) (*result.Bundle, error) {
+		kase, err := c.shipped(vc.Shipped, vc.Changes)
 		if err != nil {
 			return nil, err
 		}
@@ -47,7 +56,7 @@ func (c *command) verify(cmd *cobra.Command) error {
 				}
 			},
 		})
-		if err == nil && kase.Waves.Equation == configs.Teukolsky && c.engine.SecondOpinion != nil {
+		if err == nil && kase.Waves.Equation == configs.Teukolsky && c.engine.CanAsk != nil && c.engine.CanAsk(kase) == nil {
 			err = c.engine.SecondOpinion(ctx, kase, b.Result, c.workers)
 		}
 		return b, err
@@ -56,6 +65,15 @@ func (c *command) verify(cmd *cobra.Command) error {
 	m.stop()
 	if err != nil {
 		return err
+	}
+	if c.page != "" {
+		var page bytes.Buffer
+		if err := outcome.Page(&page, version()); err != nil {
+			return err
+		}
+		if err := os.WriteFile(c.page, page.Bytes(), 0o666); err != nil {
+			return coded(ExitFiles, fmt.Errorf("the page could not be written: %w", err))
+		}
 	}
 	out := cmd.OutOrStdout()
 	if c.json {

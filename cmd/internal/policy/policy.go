@@ -80,7 +80,7 @@ func Rules() []Rule {
 		// Spheroidal modes need the equation's angular matrices and the hole.
 		{Package: "extract/kerr", Inside: []string{"extract", "extract/...", "equations", "hyperboloidal"}, Outside: []string{linearAlgebra}},
 		{Package: "extract/table", Machine: true}, // opens the files that others wrote
-		{Package: "extract/compare", Inside: []string{"extract/result", "extract/table"}, Outside: []string{linearAlgebra}},
+		{Package: "extract/compare", Inside: []string{"extract/result", "extract/table", "extract/flux"}, Outside: []string{linearAlgebra}},
 		{Package: "extract/store", Inside: []string{"extract/result"}, Outside: []string{arrays, systemCalls}, Machine: true},
 		{Package: "extract/report", Inside: []string{"extract/result"}},
 
@@ -94,7 +94,7 @@ func Rules() []Rule {
 			"equations/evolve", // its failure alone, which has an exit code
 			"cmd/internal/wire", "cmd/internal/verify"},
 			Outside: []string{commandLine, commandFlags, bar, terminal}, Machine: true},
-		{Package: "examples/faultymodel", Inside: []string{"extract/result", "extract/compare", "extract/store"}, Machine: true},
+		{Package: "cmd/faultymodel", Inside: []string{"hyperboloidal", "extract/result", "extract/compare", "extract/store", "extract/strain", "extract/flux"}, Machine: true},
 		{Package: "cmd/nullmark", Inside: []string{"cmd/internal/app", "cmd/internal/wire"}, Machine: true},
 	}
 }

@@ -14,6 +14,7 @@ const (
 	groupSlicing    = "slicing"
 	groupSource     = "source"
 	groupExtraction = "extraction"
+	groupOrbits     = "orbits"
 	groupBars       = "error bars"
 )
 
@@ -52,22 +53,26 @@ func promise() Source {
 func Checks() []Check {
 	var all []Check
 	all = append(all, equationChecks()...)
+	all = append(all, ringingChecks()...)
 	all = append(all, slicingChecks()...)
+	all = append(all, tailChecks()...)
 	all = append(all, sourceChecks()...)
 	all = append(all, extractionChecks()...)
+	all = append(all, orbitChecks()...)
 	all = append(all, barChecks()...)
 	all = append(all, kerrChecks()...)
+	all = append(all, pulseBarChecks()...)
 	return all
 }
 
 // circular is the shipped case at another radius, with every mode up to lMax
 // held to a relative accuracy.
-func circular(r0 float64, lMax int, relative string) []string {
-	return []string{fmt.Sprintf("orbit.radius=%v", r0), fmt.Sprintf("waves.l_max=%d", lMax), "accuracy.relative=" + relative}
+func circular(r0 float64, lMax int, relative string) Case {
+	return Case{"circular.yaml", []string{fmt.Sprintf("orbit.radius=%v", r0), fmt.Sprintf("waves.l_max=%d", lMax), "accuracy.relative=" + relative}}
 }
 
 // everyMode is the case that most checks at one radius share.
-func everyMode(r0 float64) []string { return circular(r0, 8, "1e-6") }
+func everyMode(r0 float64) Case { return circular(r0, 8, "1e-6") }
 
 // ofMode makes the way to one number of one mode of a case.
 func ofMode(l, m int, number func(*result.Mode) (result.Q, bool)) func([]*result.Result) (result.Q, error) {
@@ -154,9 +159,9 @@ func equationChecks() []Check {
 		want := ref.mode(l, m)
 		all = append(all,
 			Check{groupEquation, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 6", l, m), frequencyDomain(),
-				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, [][]string{everyMode(6)}, ofMode(l, m, energyInfinity)},
+				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, []Case{everyMode(6)}, ofMode(l, m, energyInfinity)},
 			Check{groupEquation, fmt.Sprintf("(%d,%d) energy, horizon, r0 = 6", l, m), frequencyDomain(),
-				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, [][]string{everyMode(6)}, ofMode(l, m, energyHorizon)})
+				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, []Case{everyMode(6)}, ofMode(l, m, energyHorizon)})
 	}
 	return all
 }
@@ -171,7 +176,7 @@ func slicingChecks() []Check {
 			l, m := lm[0], lm[1]
 			s := ref.mode(l, m).Strain
 			all = append(all, Check{groupSlicing, fmt.Sprintf("(%d,%d) strain phase (rad), r0 = %v", l, m, r0), frequencyDomain(),
-				math.Atan2(s[1], s[0]), referenceDigits, false, [][]string{everyMode(r0)}, ofMode(l, m, phase)})
+				math.Atan2(s[1], s[0]), referenceDigits, false, []Case{everyMode(r0)}, ofMode(l, m, phase)})
 		}
 	}
 	return all
@@ -186,12 +191,12 @@ func sourceChecks() []Check {
 		want := ref.mode(l, m)
 		all = append(all,
 			Check{groupSource, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 10", l, m), frequencyDomain(),
-				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, [][]string{everyMode(10)}, ofMode(l, m, energyInfinity)},
+				want.EnergyInfinity, referenceDigits * want.EnergyInfinity, false, []Case{everyMode(10)}, ofMode(l, m, energyInfinity)},
 			Check{groupSource, fmt.Sprintf("(%d,%d) energy, horizon, r0 = 10", l, m), frequencyDomain(),
-				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, [][]string{everyMode(10)}, ofMode(l, m, energyHorizon)})
+				want.EnergyHorizon, referenceDigits * want.EnergyHorizon, false, []Case{everyMode(10)}, ofMode(l, m, energyHorizon)})
 	}
 	// From memory, frequency domain beside time domain.
-	changes := []string{"orbit.radius=7.9456", "waves.modes=[[2,2],[2,1],[3,3]]", "accuracy.relative=1e-6"}
+	kase := Case{"circular.yaml", []string{"orbit.radius=7.9456", "waves.modes=[[2,2],[2,1],[3,3]]", "accuracy.relative=1e-6"}}
 	for _, c := range []struct {
 		l, m            int
 		frequency, time float64
@@ -201,7 +206,7 @@ func sourceChecks() []Check {
 		{3, 3, 2.5471e-5, 2.5432e-5},
 	} {
 		all = append(all, Check{groupSource, fmt.Sprintf("(%d,%d) energy, infinity, r0 = 7.9456", c.l, c.m), martel(),
-			c.frequency, math.Abs(c.frequency - c.time), false, [][]string{changes}, ofMode(c.l, c.m, energyInfinity)})
+			c.frequency, math.Abs(c.frequency - c.time), false, []Case{kase}, ofMode(c.l, c.m, energyInfinity)})
 	}
 	return all
 }
@@ -217,16 +222,16 @@ func extractionChecks() []Check {
 		omega := math.Pow(r0, -1.5)
 		all = append(all,
 			Check{groupExtraction, fmt.Sprintf("(2,2) strain amplitude, r0 = %v", r0), frequencyDomain(),
-				a, referenceDigits * a, false, [][]string{everyMode(r0)}, ofMode(2, 2, amplitude)},
-			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, infinity, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, [][]string{everyMode(r0)},
+				a, referenceDigits * a, false, []Case{everyMode(r0)}, ofMode(2, 2, amplitude)},
+			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, infinity, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, []Case{everyMode(r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Infinity) })},
-			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, horizon, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, [][]string{everyMode(r0)},
+			Check{groupExtraction, fmt.Sprintf("Edot/Ldot, horizon, r0 = %v", r0), exactRelation(), omega, 1e-15 * omega, false, []Case{everyMode(r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) { return energyPerAngularMomentum(t.Horizon) })},
 			Check{groupExtraction, fmt.Sprintf("all l, energy, infinity, r0 = %v", r0), frequencyDomain(),
-				ref.Total.EnergyInfinity, referenceDigits * ref.Total.EnergyInfinity, false, [][]string{everyMode(r0)},
+				ref.Total.EnergyInfinity, referenceDigits * ref.Total.EnergyInfinity, false, []Case{everyMode(r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) { return energy(t.Infinity) })},
 			Check{groupExtraction, fmt.Sprintf("all l, energy, horizon, r0 = %v", r0), frequencyDomain(),
-				ref.Total.EnergyHorizon, referenceDigits * ref.Total.EnergyHorizon, false, [][]string{everyMode(r0)},
+				ref.Total.EnergyHorizon, referenceDigits * ref.Total.EnergyHorizon, false, []Case{everyMode(r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) { return energy(t.Horizon) })})
 	}
 	for _, c := range []struct {
@@ -237,12 +242,12 @@ func extractionChecks() []Check {
 		series, next := Series(v)
 		leading := quadrupole(v)
 		all = append(all,
-			Check{groupExtraction, fmt.Sprintf("flux/quadrupole, infinity, r0 = %v", c.r0), postNewtonian(), series, next, c.slow, [][]string{farOut(c.r0)},
+			Check{groupExtraction, fmt.Sprintf("flux/quadrupole, infinity, r0 = %v", c.r0), postNewtonian(), series, next, c.slow, []Case{farOut(c.r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) {
 					q, ok := energy(t.Infinity)
 					return scaled(q, leading), ok
 				})},
-			Check{groupExtraction, fmt.Sprintf("horizon flux/(quadrupole v^8), r0 = %v", c.r0), absorption(), 1, 10 * v * v, c.slow, [][]string{farOut(c.r0)},
+			Check{groupExtraction, fmt.Sprintf("horizon flux/(quadrupole v^8), r0 = %v", c.r0), absorption(), 1, 10 * v * v, c.slow, []Case{farOut(c.r0)},
 				ofTotal(func(t *result.Total) (result.Q, bool) {
 					q, ok := energy(t.Horizon)
 					return scaled(q, leading*math.Pow(v, 8)), ok
@@ -252,7 +257,7 @@ func extractionChecks() []Check {
 }
 
 // farOut is the case of the weak-field limits.
-func farOut(r0 float64) []string { return circular(r0, 6, "1e-6") }
+func farOut(r0 float64) Case { return circular(r0, 6, "1e-6") }
 
 // barChecks: do the bars hold the truth, and are they no wider than they say?
 // Every mode of both radii of the independent table, energy flux at both ends
@@ -293,8 +298,8 @@ func barChecks() []Check {
 type barAndError struct{ bar, err float64 }
 
 // bothRadii are the cases of every orbit in the independent table.
-func bothRadii(relative string) [][]string {
-	return [][]string{circular(6, 8, relative), circular(10, 8, relative)}
+func bothRadii(relative string) []Case {
+	return []Case{circular(6, 8, relative), circular(10, 8, relative)}
 }
 
 // overBars makes the way to a statistic of all bars of these two cases.

@@ -70,8 +70,8 @@ func kerrAbsorption() Source {
 }
 
 // kerrCase is a circular equatorial orbit on Kerr.
-func kerrCase(a, r0 float64, waves, relative string) []string {
-	return []string{fmt.Sprintf("hole.spin=%v", a), fmt.Sprintf("orbit.radius=%v", r0), "waves.equation=teukolsky", waves, "accuracy.relative=" + relative}
+func kerrCase(a, r0 float64, waves, relative string) Case {
+	return Case{"circular.yaml", []string{fmt.Sprintf("hole.spin=%v", a), fmt.Sprintf("orbit.radius=%v", r0), "waves.equation=teukolsky", waves, "accuracy.relative=" + relative}}
 }
 
 func ofPerM(m int, pick func(*result.PerM) *result.Flux) func([]*result.Result) (result.Q, error) {
@@ -90,7 +90,7 @@ func ofPerM(m int, pick func(*result.PerM) *result.Flux) func([]*result.Result) 
 func kerrChecks() []Check {
 	var all []Check
 	ref := referenceKerr(0.9, 6)
-	near := [][]string{kerrCase(0.9, 6, "waves.modes=[[2,2],[2,1],[3,3]]", "1e-6")}
+	near := []Case{kerrCase(0.9, 6, "waves.modes=[[2,2],[2,1],[3,3]]", "1e-6")}
 	for _, p := range ref.PerM {
 		if p.M <= 3 {
 			all = append(all, Check{groupKerr, fmt.Sprintf("m = %d, all l, energy, infinity, a = 0.9, r0 = 6", p.M), kerrFrequencyDomain(),
@@ -128,10 +128,10 @@ func kerrChecks() []Check {
 	all = append(all,
 		Check{groupKerr, "share of numbers inside both bars, a = 0.9, r0 = 6", secondOpinion(), 1, 0.1, false, near, agree},
 		Check{groupKerr, "share of numbers inside both bars, a = -0.9, r0 = 10", secondOpinion(), 1, 0.1, true,
-			[][]string{kerrCase(-0.9, 10, "waves.l_max=3", "1e-8")}, agree})
+			[]Case{kerrCase(-0.9, 10, "waves.l_max=3", "1e-8")}, agree})
 	const a, r0 = 0.9, 20.0
 	v := math.Pow(1/(math.Pow(r0, 1.5)+a), 1./3)
-	far := [][]string{kerrCase(a, r0, "waves.l_max=5", "1e-6")}
+	far := []Case{kerrCase(a, r0, "waves.l_max=5", "1e-6")}
 	series, next := KerrSeries(a, v)
 	hor := KerrAbsorption(a, v)
 	all = append(all,

@@ -5,6 +5,8 @@ import (
 	"encoding/json"
 	"fmt"
 	"math"
+	"strconv"
+	"strings"
 )
 
 // circularReference is a table of circular orbits on Schwarzschild, computed
@@ -22,6 +24,80 @@ type circularOrbit struct {
 		EnergyHorizon  float64 `json:"energy_horizon"`
 	} `json:"total"`
 	Modes []circularMode `json:"modes"`
+}
+
+// The tables of one eccentric orbit and of a radial fall, of the same making.
+//
+//go:embed published/eccentric_schwarzschild.json
+var eccentricReference []byte
+
+//go:embed published/infall.json
+var infallReference []byte
+
+// eccentricOrbit is the orbit of the table. Fluxes are averages per coordinate
+// time and count m and -m together; digits are half a unit of the last that is
+// printed.
+type eccentricOrbit struct {
+	P     float64      `json:"p"`
+	E     float64      `json:"e"`
+	Total eccentricRow `json:"total"`
+	Modes []struct {
+		L int `json:"l"`
+		M int `json:"m"`
+		eccentricRow
+	} `json:"modes"`
+}
+
+type eccentricRow struct {
+	EnergyInfinity  json.Number `json:"energy_infinity"`
+	AngMomInfinity  json.Number `json:"angular_momentum_infinity"`
+	EnergyHorizon   json.Number `json:"energy_horizon"`
+	AngMomOfHorizon json.Number `json:"angular_momentum_horizon"`
+}
+
+func eccentricTable() eccentricOrbit {
+	var table struct {
+		Orbits []eccentricOrbit `json:"orbits"`
+	}
+	if err := json.Unmarshal(eccentricReference, &table); err != nil || len(table.Orbits) != 1 {
+		panic(fmt.Sprintf("verify: the embedded table of eccentric orbits: %v", err))
+	}
+	return table.Orbits[0]
+}
+
+func (o eccentricOrbit) mode(l, m int) eccentricRow {
+	for _, e := range o.Modes {
+		if e.L == l && e.M == m {
+			return e.eccentricRow
+		}
+	}
+	panic(fmt.Sprintf("verify: the embedded table of eccentric orbits has no mode (%d,%d)", l, m))
+}
+
+// infallEnergy is the energy in l = 2 of the fall from rest at infinity.
+func infallEnergy() float64 {
+	var table struct {
+		PerL []struct {
+			L      int     `json:"l"`
+			Energy float64 `json:"energy"`
+		} `json:"per_l"`
+	}
+	if err := json.Unmarshal(infallReference, &table); err != nil || len(table.PerL) == 0 || table.PerL[0].L != 2 {
+		panic(fmt.Sprintf("verify: the embedded table of the radial fall: %v", err))
+	}
+	return table.PerL[0].Energy
+}
+
+// cited is a printed number with half a unit of its last digit.
+func cited(n json.Number) (value, half float64) {
+	value, err := n.Float64()
+	if err != nil {
+		panic(fmt.Sprintf("verify: an embedded table holds %q for a number", n))
+	}
+	mantissa, exponent, _ := strings.Cut(n.String(), "e")
+	_, fraction, _ := strings.Cut(mantissa, ".")
+	e, _ := strconv.Atoi(exponent)
+	return value, 0.5 * math.Pow(10, float64(e-len(fraction)))
 }
 
 type circularMode struct {

@@ -66,16 +66,22 @@ func (o *Outcome) Table(w io.Writer, colour bool) error {
 			b.WriteString(wrapped("  "+r.Source+": "+r.Citation+".", 100, "    "))
 		}
 	}
-	b.WriteString("\nUnits G = c = M = 1, fluxes in (mu/M)^2, m and -m together. apart = |ours - published| in units of\n" +
-		"our error bar plus what the source claims for its digits; a check passes up to 1. A case that several\n" +
-		"checks need is run once, for the first of them (column s: seconds).\n\n")
-	if o.Passed {
-		fmt.Fprintf(&b, "%d checks passed in %.1f s.\n", len(o.Checks), o.Seconds)
-	} else {
-		fmt.Fprintf(&b, "%d of %d checks FAILED (%.1f s).\n", o.Failed, len(o.Checks), o.Seconds)
-	}
+	b.WriteString("\n" + wrapped(legend, 100, "") + "\n" + o.verdict() + "\n")
 	_, err := io.WriteString(w, b.String())
 	return err
+}
+
+// legend says what the columns mean.
+const legend = "Units G = c = M = 1, fluxes in (mu/M)^2, m and -m together, frequencies in 1/M. " +
+	"apart = |ours - published| in units of our error bar plus what the source claims for its digits; a check passes up to 1. " +
+	"A case that several checks need is run once, for the first of them (column s: seconds)."
+
+// verdict sums the outcome up.
+func (o *Outcome) verdict() string {
+	if o.Passed {
+		return fmt.Sprintf("%d checks passed in %.1f s.", len(o.Checks), o.Seconds)
+	}
+	return fmt.Sprintf("%d of %d checks FAILED (%.1f s).", o.Failed, len(o.Checks), o.Seconds)
 }
 
 // wrapped breaks a paragraph at spaces into lines of at most width characters,

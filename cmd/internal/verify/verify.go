@@ -31,13 +31,21 @@ type Check struct {
 	Published float64 // the number there
 	Tolerance float64 // absolute: what the source claims for it, at least half a unit of its last digit
 	Slow      bool    // runs only when asked for
-	// Cases are what has to be run for it, each the shipped circular case with
-	// some keys changed, written "key.path=value".
-	Cases [][]string
+	// Cases are what has to be run for it.
+	Cases []Case
 	// Ours finds the same number with its error bar in the results of Cases,
 	// which come in the same order and are not to be modified.
 	Ours func(r []*result.Result) (result.Q, error)
 }
+
+// A Case is one that comes with the tool, by its file's name, with some keys
+// changed, written "key.path=value".
+type Case struct {
+	Shipped string
+	Changes []string
+}
+
+func (c Case) key() string { return c.Shipped + "\n" + strings.Join(c.Changes, "\n") }
 
 // A Source is where a published number stands.
 type Source struct {
@@ -73,10 +81,9 @@ type Outcome struct {
 	Checks  []Row   `json:"checks"`
 }
 
-// A Runner runs the shipped circular case with these changes, with the second
-// opinion where the equation is teukolsky. It is the i-th of
-// n cases, counted from 0.
-type Runner func(ctx context.Context, changes []string, i, n int) (*result.Bundle, error)
+// A Runner runs a case, the i-th of n, counted from 0, with the second opinion
+// where the equation is teukolsky and the orbit circular.
+type Runner func(ctx context.Context, c Case, i, n int) (*result.Bundle, error)
 
 // Run runs the checks in their order, the slow ones only when long is set, and
 // each distinct case once. The error is not nil only when the context ended: a
@@ -89,8 +96,8 @@ func Run(ctx context.Context, checks []Check, run Runner, long bool) (*Outcome, 
 			continue
 		}
 		chosen = append(chosen, c)
-		for _, changes := range c.Cases {
-			lab.cases[key(changes)] = &caseRun{}
+		for _, kase := range c.Cases {
+			lab.cases[kase.key()] = &caseRun{}
 		}
 	}
 	out := &Outcome{Schema: Schema, Passed: true, Checks: make([]Row, 0, len(chosen))}
@@ -124,14 +131,12 @@ type caseRun struct {
 	err    error
 }
 
-func key(changes []string) string { return strings.Join(changes, "\n") }
-
-func (l *lab) result(ctx context.Context, changes []string) (*result.Result, error) {
-	c := l.cases[key(changes)]
+func (l *lab) result(ctx context.Context, kase Case) (*result.Result, error) {
+	c := l.cases[kase.key()]
 	if c.done {
 		return c.result, c.err
 	}
-	b, err := l.run(ctx, changes, l.done, len(l.cases))
+	b, err := l.run(ctx, kase, l.done, len(l.cases))
 	l.done++
 	c.done = true
 	switch {
@@ -150,8 +155,8 @@ func (c Check) carryOut(ctx context.Context, lab *lab) Row {
 	row := Row{Group: c.Group, Name: c.Name, Source: c.Source.Short, Citation: c.Source.Full,
 		Published: c.Published, Tolerance: c.Tolerance}
 	var results []*result.Result
-	for _, changes := range c.Cases {
-		r, err := lab.result(ctx, changes)
+	for _, kase := range c.Cases {
+		r, err := lab.result(ctx, kase)
 		if err != nil {
 			row.Failure = err.Error()
 			return row

@@ -34,12 +34,21 @@ type burstRun struct {
 	ends    float64 // slice time at which the evolution ends
 	event   float64 // when the orbit does what it is run for
 	after   float64 // retarded time from which numbers count
+	open    [2]bool // the particle comes from, and goes to, infinity
 	starts  map[*ladder]junkSeries
 	largest float64 // radiated energy of the strongest mode, per both signs
+	turning bool    // goes round many times before the event
+	table   *tablePath
 }
 
 // burstPath makes the worldline of a transient case.
 func burstPath(c *configs.Case) (worldline.Worldline, error) {
+	return burstPathOf(c, worldline.FollowFrequency)
+}
+
+// burstPathOf is burstPath with the torque of an inspiral continued through the
+// plunge in one of the ways there are.
+func burstPathOf(c *configs.Case, through worldline.Continuation) (worldline.Worldline, error) {
 	o := c.Orbit
 	switch o.Kind {
 	case configs.Infall:
@@ -51,7 +60,10 @@ func burstPath(c *configs.Case) (worldline.Worldline, error) {
 		if err != nil {
 			return nil, err
 		}
-		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive})
+		return worldline.NewInspiral(worldline.InspiralOrbit{MassRatio: o.MassRatio, From: o.From, Drive: drive, Continue: through})
+	}
+	if o.Kind == configs.Table {
+		return newTablePath(o)
 	}
 	return nil, fmt.Errorf("orbit.kind %s is not a transient", o.Kind)
 }
@@ -76,27 +88,58 @@ func burstRamp(event float64) source.Ramp {
 
 // eventTime is when a transient orbit does what it is run for.
 func eventTime(w worldline.Worldline) float64 {
+	th := horizonTime(w)
 	for _, m := range w.Markers() {
-		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron {
+		if m.Name == worldline.MarkPeakOmega || m.Name == worldline.MarkPeriastron && math.IsInf(th, 1) {
 			return m.T
 		}
 	}
-	return horizonTime(w) - 30
+	if _, t1 := w.Span(); math.IsInf(th, 1) {
+		return t1 / 2 // a table that only leaves
+	}
+	return th - 30
 }
 
+// turnsBefore is how often a path goes round before time t.
+func turnsBefore(w worldline.Worldline, t float64) float64 {
+	var a, b worldline.State
+	w.At(0, &a)
+	w.At(t, &b)
+	return math.Abs(b.Phi-a.Phi) / (2 * math.Pi)
+}
+
+// fastCells widens the kernel of a particle that comes near the speed of light:
+// measured on a plunge from r = 5.95, the distance between rungs at the light
+// ring is 2e-9 of the peak with 1.9 cells (and stays there from rung to rung),
+// 2e-11 with 2.1 and 6e-11 with 2.3 (1e-6 asked; at 1e-8 2e-12 and 3e-12).
+const fastCells = 1.16
+
 func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
-	w, err := burstPath(c)
+	w, err := burstPathOf(c, n.through)
 	if err != nil {
 		return nil, err
 	}
 	r := &burstRun{climb: newClimb(n, o), path: w, asked: c.Accuracy.Relative}
 	r.kind = r
+	r.turning = w.Kind() == configs.Inspiral
+	if t, ok := w.(*tablePath); ok {
+		r.table, r.origin = t, t.origin
+		r.half, r.halved = t.thin()
+		if r.n.until > 0 {
+			r.n.until -= t.origin
+		}
+	}
+	r.open[0], r.open[1] = openEnds(c)
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
 	r.event = eventTime(w)
+	r.turning = r.turning || r.table != nil && r.table.plunges() && turnsBefore(w, r.event) > 3
 	r.n.ramp = burstRamp(r.event)
 	r.n.filter, r.n.filterStrength = 16, 0.5
+	if c.Numerics.KernelWidth == nil {
+		r.n.cells *= fastCells
+	}
 	r.n.courant = math.Min(r.n.courant, 1.1)
 	r.n.outer = math.Max(r.n.outer, 30)
 	if r.falls {
@@ -111,6 +154,9 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 	switch {
 	case r.n.until > 0:
 		r.ends = r.n.until + r.n.domain.So
+		if r.table != nil && !r.falls {
+			r.ends = math.Min(r.ends, lastSlice(w, &r.n, r.table.last))
+		}
 	case r.falls:
 		// r_* = -30 is passed about 33 M after the light ring; the ringdown is
 		// followed for 150 M.
@@ -119,9 +165,7 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 		// The source stops at the end of the path: what that sends out arrives
 		// later than anything that is used.
 		_, t1 := w.Span()
-		var s worldline.State
-		w.At(t1, &s)
-		r.ends = t1 - s.Rstar - source.NewKernel(r.n.widest, r.n.moments).Reach() + r.n.domain.So
+		r.ends = lastSlice(w, &r.n, t1)
 	}
 	var start worldline.State
 	w.At(0, &start)
@@ -197,6 +241,15 @@ func runBurst(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err != nil {
 		return nil, err
 	}
+	if r.table != nil && r.table.hasOwn() {
+		d, err := r.choice(ctx, r.table, r.ends, func(s *certify.Samples, m *ladder) float64 {
+			return certify.Integrate(s, certify.Infinity, r.after+r.n.domain.So, r.ends-1, 0.25).Power * flux.Norm(m.l)
+		})
+		if err != nil {
+			return nil, err
+		}
+		tellChoice(c, b.Result, d)
+	}
 	b.Result.Provenance = clock.stop(o.Workers)
 	return b, nil
 }
@@ -225,7 +278,7 @@ func (r *burstRun) quietAt() float64 {
 			after += 2
 		}
 	}
-	if r.path.Kind() == configs.Inspiral {
+	if r.turning {
 		// An inspiral has time: its strain counts from here on as well.
 		for _, m := range r.modes {
 			j := r.starts[m]
@@ -254,7 +307,7 @@ func (r *burstRun) quiet(*certify.Samples, *ladder, float64, int) bool { return 
 // transients from shortly before their event (the residue of the start-up has a
 // bar at every sample in any case).
 func (r *burstRun) strainFrom() float64 {
-	if r.path.Kind() == configs.Inspiral {
+	if r.turning {
 		return r.after
 	}
 	var s worldline.State
@@ -308,7 +361,12 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 			count++
 		}
 		f := &m.mov.flux[e]
-		f.energy, f.spin = c*x[0].Power, c*float64(m.m)*x[0].Spin
+		var more radiated
+		if certify.End(e) == certify.Infinity {
+			more = r.outside(m, m.runs[m.rung])
+		}
+		power, spin := x[0].Power+more.power, x[0].Spin+more.spin
+		f.energy, f.spin = c*power, c*float64(m.m)*spin
 		disc := func(a, b, g float64) float64 {
 			v := math.Abs(a - b)
 			if count > 2 {
@@ -319,13 +377,20 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 		start := r.starts[m].energy(e, from, x[0].Power)
 		dr, dphi := r.path.Uncertainty()
 		path := 2*dr + 2*float64(m.m)*dphi
+		if s := r.starts[m]; s.thin != nil {
+			a, b := certify.Integrate(s.full, certify.End(e), from, until, 0.25), certify.Integrate(s.thin, certify.End(e), from, until, 0.25)
+			path = r.halved * math.Abs(a.Power-b.Power) / a.Power
+			if a.Spin != 0 {
+				path = math.Max(path, r.halved*math.Abs(a.Spin-b.Spin)/math.Abs(a.Spin))
+			}
+		}
 		f.energyBar = certify.Budget{
-			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/x[0].Power + path,
-			Transient:      start / x[0].Power, RoundOff: 2 * round,
+			Discretisation: disc(x[0].Power, x[1].Power, x[2].Power)/power + path,
+			Transient:      start / power, Range: more.powerBar / power, RoundOff: 2 * round,
 		}
 		f.spinBar = certify.Budget{
-			Discretisation: disc(x[0].Spin, x[1].Spin, x[2].Spin)/math.Max(math.Abs(x[0].Spin), 1e-300) + path,
-			Transient:      start / math.Max(x[0].Power, 1e-300), RoundOff: 2 * round,
+			Discretisation: disc(x[0].Spin, x[1].Spin, x[2].Spin)/math.Max(math.Abs(spin), 1e-300) + path,
+			Transient:      start / math.Max(power, 1e-300), Range: more.spinBar / math.Max(math.Abs(spin), 1e-300), RoundOff: 2 * round,
 		}
 		if m.m == 0 {
 			f.spinBar = certify.Budget{}
@@ -337,6 +402,25 @@ func (r *burstRun) certify(m *ladder) (climb bool, err error) {
 		climb = climb || b.Discretisation > 0.3*r.asked
 	}
 	return climb, nil
+}
+
+// slowest is the most that a difference of two rungs is multiplied with in a bar
+// of a sample: where differences do not shrink from rung to rung, what is left
+// is of their own size.
+const slowest = 4.0
+
+// resampled is the order of the polynomials that put two rungs on common times.
+const resampled = 10
+
+// unsettled is what remains, in units of the last difference, where differences
+// between rungs fall from before to last like a geometric series.
+func unsettled(last, before []float64) []float64 {
+	out := make([]float64, len(last))
+	for i := range out {
+		q := last[i] / math.Max(before[i], 1e-300)
+		out[i] = math.Min(q/math.Max(1-q, 1e-3), slowest)
+	}
+	return out
 }
 
 // sampled resamples the field of a mode at one end with a bar per sample: what
@@ -357,12 +441,21 @@ func (r *climb) sampledWith(m *ladder, e certify.End, start float64, at []float6
 		diff[i] = cmplx.Abs(w[i] - fac*o[i])
 		peak = math.Max(peak, cmplx.Abs(w[i]))
 	}
-	left := certify.Leftover(min(r.n.order, r.n.moments))
+	left := certify.Leftover(min(r.n.order, r.n.moments, resampled))
 	round := certify.RoundOff(m.points[m.rung], 1)
-	near := runningMax(diff, int(math.Ceil(12/step)))
+	reach := int(math.Ceil(12 / step))
+	near := runningMax(diff, reach)
 	bar = make([]float64, len(w))
+	slow := make([]float64, len(w))
+	if coarse := m.runs[m.rung-2]; coarse != nil && coarse.Until() >= at[len(at)-1]-start {
+		before := strain.Resample(coarse.Psi[e], start, coarse.Dt, at)
+		for i := range before {
+			slow[i] = cmplx.Abs(fac * (o[i] - before[i]))
+		}
+		slow = unsettled(near, runningMax(slow, reach))
+	}
 	for i := range w {
-		bar[i] = left*near[i] + cmplx.Abs(fac)*junk.at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
+		bar[i] = math.Max(left, slow[i])*near[i] + cmplx.Abs(fac)*junk.at(int(e), at[i]-start) + round*peak + float64(m.m)*dphi*cmplx.Abs(w[i])
 	}
 	return w, bar, diff
 }
@@ -382,11 +475,14 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
 		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
 	}
+	if r.table != nil {
+		r.shiftMarkers(res.Orbit)
+		res.Warnings = append(res.Warnings, r.table.notes()...)
+	}
 	delete(res.Conventions, "circular strain")
 	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
-	d := r.n.domain
-	res.Conventions["totals"] = fmt.Sprintf("radiated energy and angular momentum from u = %.6g to u = %.6g", r.after, d.Retarded(r.ends)-1)
+	res.Conventions["totals"] = r.rangeWords()
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its energy counts once"
 	if r.falls {
 		res.Conventions["horizon"] = "the particle crosses the horizon: its own field passes there, and no absorbed total is given"
@@ -402,9 +498,9 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)
 	if s != nil {
-		s.JunkUntil = r.after
+		s.JunkUntil = r.after + r.origin
 	}
-	return &result.Bundle{Result: res, Series: s}, nil
+	return &result.Bundle{Result: res, Series: s, Spectrum: r.spectrumOf(res)}, nil
 }
 
 func (r *burstRun) entry(m *ladder, rung int) result.Mode {
@@ -423,7 +519,7 @@ func (r *burstRun) entry(m *ladder, rung int) result.Mode {
 		L: m.l, M: m.m, Parity: m.parity.String(), Measure: total, Counts: counts, Infinity: at(f[certify.Infinity]),
 		Met: m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
-			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "round-off": f[0].energyBar.RoundOff,
+			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "outside the range": f[0].energyBar.Range, "round-off": f[0].energyBar.RoundOff,
 		},
 	}
 	if !r.falls {
@@ -443,26 +539,39 @@ func (r *climb) seriesOf(c *configs.Case, path worldline.Worldline, junk map[*la
 	}
 	d := r.n.domain
 	s := &result.Series{Prefix: "h", HorizonPrefix: "psi"}
-	s.U = ladderOfTimes(c.Output.Every, 0, d.Retarded(until))
-	s.V = ladderOfTimes(c.Output.Every, math.Ceil(d.Advanced(0)), d.Advanced(until))
+	s.U = ladderOfTimes(c.Output.Every, r.origin, r.origin+d.Retarded(until))
+	s.V = ladderOfTimes(c.Output.Every, math.Ceil(r.origin+d.Advanced(0)), r.origin+d.Advanced(until))
+	atU, atV := since(s.U, r.origin), since(s.V, r.origin)
 	t0, t1 := path.Span()
 	var st worldline.State
-	for _, t := range s.U {
+	for i, t := range atU {
 		if t >= t0 && t <= t1 {
 			path.At(t, &st)
 			if st.Rstar < worldline.HorizonApproach {
 				break
 			}
-			s.T, s.R, s.Phi = append(s.T, t), append(s.R, st.R), append(s.Phi, st.Phi)
+			s.T, s.R, s.Phi = append(s.T, s.U[i]), append(s.R, st.R), append(s.Phi, st.Phi)
 		}
 	}
 	for _, m := range r.modes {
 		out := result.ModeSeries{L: m.l, M: m.m}
-		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), s.U, c.Output.Every, junk[m], dphi)
-		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), s.V, c.Output.Every, junk[m], dphi)
+		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), atU, c.Output.Every, junk[m], dphi)
+		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), atV, c.Output.Every, junk[m], dphi)
 		s.Modes = append(s.Modes, out)
 	}
 	return s
+}
+
+// since is the times counted from origin.
+func since(times []float64, origin float64) []float64 {
+	if origin == 0 {
+		return times
+	}
+	out := make([]float64, len(times))
+	for i, t := range times {
+		out[i] = t - origin
+	}
+	return out
 }
 
 // checkBurst passes on what the worldline refuses.
@@ -472,8 +581,32 @@ func checkBurst(c *configs.Case) []configs.Problem {
 	}
 	switch c.Orbit.Kind {
 	case configs.Infall, configs.Scatter, configs.Inspiral:
-		_, err := burstPath(c)
-		return refusal(err)
+		w, err := burstPath(c)
+		if err != nil {
+			return refusal(err)
+		}
+		if c.Orbit.Kind == configs.Infall && c.Orbit.From <= 3.5 {
+			return []configs.Problem{{Key: "orbit.from", Value: c.Orbit.From, Want: "a start radius above 3.5: from there on the particle is at the light ring (r = 3) before its source could be switched on"}}
+		}
+		if c.Span.Until == nil {
+			return nil
+		}
+		// The event, and some of what follows it.
+		var s worldline.State
+		event := eventTime(w)
+		w.At(event, &s)
+		if least := event - math.Max(s.Rstar, 0) + 60; *c.Span.Until < least {
+			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+				"at least %.0f: the waves of the %s arrive around u = %.0f (or leave span out)", math.Ceil(least), eventName(w), least-60)}}
+		}
 	}
 	return nil
+}
+
+// eventName is what eventTime finds, in words.
+func eventName(w worldline.Worldline) string {
+	if w.Kind() == configs.Scatter {
+		return "passage through periastron"
+	}
+	return "plunge"
 }

@@ -36,6 +36,7 @@ type circularMode struct {
 	tone  certify.Tone
 	f, g  float64
 	power int        // of the demodulation window
+	least int        // smallest power whose window holds enough samples of the coarsest rung
 	scout [2]float64 // |amplitude| of the scouting run by end
 	z     [2]complex128
 	// coarse is the amplitude at infinity on the second finest rung
@@ -69,10 +70,17 @@ func newCircularRun(c *configs.Case, n numerics, o Options) *circularRun {
 		}
 		m := newLadder(lm[0], lm[1])
 		m.circ = r.orbit.mode(lm[0], lm[1], r.n.on())
-		m.circ.power = certify.WindowPower(r.asked)
+		m.circ.least = leastPower(m.circ.tone, r.n.courant*r.n.coarsestDx)
+		m.circ.power = max(certify.WindowPower(r.asked), m.circ.least)
 		r.modes = append(r.modes, m)
 	}
 	return r
+}
+
+// leastPower is the smallest power of a window, of power+1 periods, that holds 24
+// samples dt apart: a fast mode of a tight orbit needs more than two periods.
+func leastPower(t certify.Tone, dt float64) int {
+	return max(1, int(math.Ceil(24*dt/t.Period()))-1)
 }
 
 // runCircular evolves all modes of a circular orbit on Schwarzschild.
@@ -112,7 +120,7 @@ func (r *circularRun) scouting(ctx context.Context) error {
 	until := func(a, b int) float64 {
 		t := 0.0
 		for _, m := range r.modes[a:b] {
-			t = math.Max(t, certify.Earliest(m.circ.tone, 1)+60)
+			t = math.Max(t, certify.Earliest(m.circ.tone, m.circ.least)+60)
 		}
 		return t
 	}
@@ -127,7 +135,7 @@ func (r *circularRun) scouting(ctx context.Context) error {
 		}
 		for q, m := range r.modes[a:b] {
 			for e := range m.circ.scout {
-				rd, err := certify.Read(&run.Samples[q], certify.End(e), m.circ.tone, run.Until, 1)
+				rd, err := certify.Read(&run.Samples[q], certify.End(e), m.circ.tone, run.Until, m.circ.least)
 				if err != nil {
 					return err
 				}

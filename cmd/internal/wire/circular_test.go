@@ -390,6 +390,15 @@ func TestSchedulingChangesNoBit(t *testing.T) {
 	}
 }
 
+// TestFastModeOfATightOrbit: two periods of the mode (12,12) at r = 5 hold fewer
+// samples of the coarsest rung than a window takes.
+func TestFastModeOfATightOrbit(t *testing.T) {
+	res := run(t, read(t, "orbit.radius=5", "waves.modes=[[2,2],[12,12]]", "accuracy.relative=1e-6")).Result
+	if !res.Accuracy.Met {
+		t.Errorf("%+v", res.Warnings)
+	}
+}
+
 // TestAsked1e14IsNotMet: an accuracy below the floor runs and says so.
 func TestAskedBelowTheFloorIsNotMet(t *testing.T) {
 	res := run(t, read(t, "accuracy.relative=1e-14", "waves.modes=[[2,2]]")).Result

@@ -95,6 +95,9 @@ func Compare(ref *result.Bundle, c *configs.Case, w Comparison) (*result.Compari
 		if in.Force, err = force(t, f); err != nil {
 			return nil, nil, err
 		}
+		if in.Force.MassRatio = m.MassRatio; in.Force.MassRatio == 0 && ref.Result.Orbit != nil {
+			in.Force.MassRatio = ref.Result.Orbit.Numbers["mass_ratio"]
+		}
 	}
 	if f := m.Noise; f != nil {
 		t, err := get(f.File)

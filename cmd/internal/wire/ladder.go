@@ -11,6 +11,7 @@ import (
 	"nullmark/extract/result"
 	"nullmark/grid"
 	"nullmark/source"
+	"nullmark/source/worldline"
 )
 
 // ladder is the state of one mode on its way up the rungs.
@@ -59,6 +60,9 @@ type climb struct {
 	n       numerics
 	o       Options
 	meter   *meter
+	origin  float64             // coordinate time of the slice 0: worldlines here count from it, results do not
+	half    worldline.Worldline // through every second row of a table, or nil
+	halved  float64             // what the error of a table is of that one's
 	modes   []*ladder
 	rungs   map[int]*result.Rung
 	members map[int]map[string]bool

@@ -37,9 +37,10 @@ type boundRun struct {
 	path    worldline.Worldline
 	numbers map[string]float64
 	period  float64 // radial period
-	advance float64 // azimuth gained in it
-	turns   int     // whole orbits the window covers
 	power   int
+	table   *tablePath // of a tabulated orbit
+	cycle   cycle      // of a tabulated orbit
+	starts  map[*ladder]junkSeries
 	asked   float64
 	floor   float64
 	largest [2]float64
@@ -66,18 +67,22 @@ func newBoundRun(c *configs.Case, n numerics, o Options) (*boundRun, error) {
 	r := &boundRun{climb: newClimb(n, o), path: w, numbers: numbersOf(w), asked: c.Accuracy.Relative, floor: c.Accuracy.Floor}
 	r.kind = r
 	r.period = r.numbers["period_r"]
-	r.advance = r.numbers["omega_phi"] * r.period
 	r.power = min(certify.WindowPower(r.asked), 3)
 	r.n.placeBetween(hyperboloidal.TortoiseAt(r.numbers["r_min"]), hyperboloidal.TortoiseAt(r.numbers["r_max"]))
 	r.n.stopAt()
-	for _, lm := range c.ModeList() {
+	r.enter(c.ModeList())
+	return r, nil
+}
+
+// enter puts modes at the foot of the ladder.
+func (r *boundRun) enter(modes [][2]int) {
+	for _, lm := range modes {
 		m := newLadder(lm[0], lm[1])
 		m.mov = &movingMode{}
 		m.allow = [2]float64{r.asked, r.asked}
 		m.rung = r.startRung(m)
 		r.modes = append(r.modes, m)
 	}
-	return r, nil
 }
 
 // startRung predicts the rung as if the orbit were circular at its periastron,
@@ -103,6 +108,22 @@ func runBound(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err != nil {
 		return nil, err
 	}
+	return r.finish(ctx, c, clock)
+}
+
+// finish runs all modes and assembles the result.
+func (r *boundRun) finish(ctx context.Context, c *configs.Case, clock clock) (*result.Bundle, error) {
+	var err error
+	if r.table != nil {
+		// The end of the run is known, and how the start-up dies away helps to
+		// tell it from a slow change of the orbit.
+		for _, m := range r.modes {
+			m.until = r.n.until
+		}
+		if r.starts, err = r.junk(ctx); err != nil {
+			return nil, err
+		}
+	}
 	// The strongest modes first: they set the scale below which a mode need
 	// not be exact.
 	all := r.modes
@@ -119,15 +140,26 @@ func runBound(ctx context.Context, c *configs.Case, n numerics, o Options) (*res
 	if err := r.run(ctx); err != nil {
 		return nil, err
 	}
-	junk, err := r.junk(ctx)
+	if r.table == nil {
+		if r.starts, err = r.junk(ctx); err != nil {
+			return nil, err
+		}
+	}
+	b, err := r.assemble(c, r.starts)
 	if err != nil {
 		return nil, err
 	}
-	b, err := r.assemble(c, junk)
-	if err != nil {
-		return nil, err
+	if r.table != nil && r.table.hasOwn() {
+		d, err := r.choice(ctx, r.table, r.n.until, func(s *certify.Samples, m *ladder) float64 {
+			e, _, _ := r.mean(s, m, certify.Infinity, r.n.until)
+			return e
+		})
+		if err != nil {
+			return nil, err
+		}
+		tellChoice(c, b.Result, d)
 	}
-	b.Result.Provenance = clock.stop(o.Workers)
+	b.Result.Provenance = clock.stop(r.o.Workers)
 	return b, nil
 }
 
@@ -214,7 +246,9 @@ func (r *boundRun) settling(s *certify.Samples, m *ladder, end certify.End, unti
 		if math.IsInf(c, 1) || b == c {
 			rho = 0.5
 		}
-		return math.Abs(a-b) * math.Max(rho/(1-rho), 1)
+		// A geometric series would leave rho/(1-rho) of the last change, a power
+		// t^-n by (n+1)/n more: 1.5 holds for n >= 2.
+		return math.Abs(a-b) * math.Max(1.5*rho/(1-rho), 1)
 	}
 	return left(e0, e1, e2) / e0, left(s0, s1, s2) / math.Max(math.Abs(s0), 1e-300), nil
 }
@@ -260,8 +294,17 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 		if err != nil {
 			return false, err
 		}
+		if s, ok := r.starts[m]; ok {
+			te, ts = math.Min(te, s.moved[e]), math.Min(ts, s.moved[e])
+		}
 		round := 2 * certify.RoundOff(m.points[m.rung], math.Max(1, float64(m.m))*r.numbers["omega_phi"])
 		path := r.pathError(m)
+		if s, ok := r.starts[m]; ok && r.half != nil {
+			// Rounded rows make a noise that adds its own power; grids of
+			// different spacing see different parts of it.
+			path = s.path[e] + far*far
+		}
+		edges := certify.WindowError(m.runs[m.rung], end, m.until, r.period, r.power)
 		bar := func(x [3]float64, settle float64) certify.Budget {
 			d := math.Max(math.Abs(x[0]-x[1]), 0.02*far*math.Abs(x[0]))
 			if count > 2 {
@@ -269,7 +312,7 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 			}
 			return certify.Budget{
 				Discretisation: certify.Leftover(min(r.n.order, r.n.moments))*d/math.Max(math.Abs(x[0]), 1e-300) + path,
-				Transient:      settle, RoundOff: round,
+				Transient:      settle, RoundOff: round + edges,
 			}
 		}
 		f := &m.mov.flux[e]
@@ -283,7 +326,9 @@ func (r *boundRun) certify(m *ladder) (climb bool, err error) {
 			m.met = false
 			m.why = strings.TrimPrefix(m.why+fmt.Sprintf("; at %s the %s holds the bar at %.1e", end, f.energyBar.Largest(), b), "; ")
 			rest := f.energyBar.Transient + f.energyBar.RoundOff
-			if f.energyBar.Discretisation > 0.3*math.Max(m.allow[e]-rest, 0) && f.energyBar.Discretisation > f.energyBar.RoundOff {
+			if r.rough(m, end) && f.energyBar.Discretisation > rest {
+				m.why += ", where the table's rows are too rough for a finer grid to help"
+			} else if f.energyBar.Discretisation > 0.3*math.Max(m.allow[e]-rest, 0) && f.energyBar.Discretisation > f.energyBar.RoundOff {
 				climb = true
 			}
 		}
@@ -300,17 +345,22 @@ func (r *boundRun) pathError(m *ladder) float64 {
 }
 
 // junk runs every mode once more on the coarsest rung with a later ramp: what
-// the switch-on leaves in a sample is where the two differ. It returns the
+// the switch-on leaves in a sample is where the two differ. (A table also runs
+// through every second of its rows.) It returns the
 // difference of the strains by mode, on the steps of the coarsest rung.
 func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 	r.meter.stage("start-up")
 	out := make([]junkSeries, len(r.modes))
 	blocks := chunk(len(r.modes))
-	later := *r
-	later.n.ramp.Centre += 25
+	later := r.n.ramp
+	later.Centre += r.delay()
+	variants := []variant{{r.n.ramp, r.worldline()}, {later, r.worldline()}}
+	if r.half != nil {
+		variants = append(variants, variant{r.n.ramp, r.half})
+	}
 	for _, b := range blocks {
 		for _, m := range r.modes[b[0]:b[1]] {
-			r.expect(0, m.until/blockModes*2)
+			r.expect(0, m.until/blockModes*float64(len(variants)))
 		}
 	}
 	err := each(ctx, r.o.Workers, len(blocks), func(ctx context.Context, i int) error {
@@ -319,15 +369,15 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		for _, m := range group {
 			until = math.Max(until, m.until)
 		}
-		var runs [2]*blockRun
-		for j, n := range []numerics{r.n, later.n} {
+		runs := make([]*blockRun, len(variants))
+		for j, v := range variants {
 			var list []blockMode
 			for _, m := range group {
 				list = append(list, m.blockMode)
 			}
-			force := r.forceWith(n.ramp, group)
+			force := movingForce(v.path, v.ramp, group)
 			b, err := kept(r.o.Keep, fmt.Sprintf("start-up-%d-%d", i, j), func() (*blockRun, error) {
-				return n.evolveBlock(ctx, list, force, 0, until, nil, r.meter.did)
+				return r.n.evolveBlock(ctx, list, force, 0, until, nil, r.meter.did)
 			})
 			if err != nil {
 				return err
@@ -336,6 +386,18 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 		}
 		for q := range group {
 			s := junkSeries{dt: runs[0].Dt}
+			if r.half != nil {
+				s.full, s.thin = &runs[0].Samples[q], &runs[2].Samples[q]
+			}
+			if k, ok := r.kind.(interface {
+				moved(m *ladder, runs []*certify.Samples) (start, path [2]float64)
+			}); ok {
+				var same []*certify.Samples
+				for _, b := range runs {
+					same = append(same, &b.Samples[q])
+				}
+				s.moved, s.path = k.moved(group[q], same)
+			}
 			for e := range s.psi {
 				a, b := runs[0].Samples[q].Psi[e], runs[1].Samples[q].Psi[e]
 				d := make([]float64, len(a))
@@ -375,6 +437,9 @@ func (r *climb) junk(ctx context.Context) (map[*ladder]junkSeries, error) {
 	return by, nil
 }
 
+// delay is how much later the second switch-on comes.
+func (r *climb) delay() float64 { return 25 }
+
 // junkSeries is the falling envelope of what a later switch-on changes in Psi.
 type junkSeries struct {
 	dt   float64
@@ -382,6 +447,11 @@ type junkSeries struct {
 	rest [2][]float64 // integral of |difference of Psi_tau|^2 from each step on
 	peak [2]float64   // of |Psi| after the switch-on, on the coarsest rung
 	sent [2]float64   // integral of |Psi_tau|^2 after the switch-on
+
+	moved [2]float64 // what the start-up may change in a table's averaged flux, relative
+	path  [2]float64 // what the rows' rounding and spacing may change in it, relative
+
+	full, thin *certify.Samples // through all rows and every second, on the coarsest rung
 }
 
 // at is the envelope at slice tau.
@@ -397,12 +467,18 @@ func (j junkSeries) energy(e int, tau, power float64) float64 {
 	return 2*math.Sqrt(power*j.rest[e][k]) + j.rest[e][k]
 }
 
-// forceWith makes a forcing with another ramp.
-func (r *climb) forceWith(ramp source.Ramp, modes []*ladder) func(grid.Grid, source.Kernel, float64) semi.Forcing {
+// worldline is the path of the particle.
+func (r *climb) worldline() worldline.Worldline {
 	if p, ok := r.kind.(interface{ worldline() worldline.Worldline }); ok {
-		return movingForce(p.worldline(), ramp, modes)
+		return p.worldline()
 	}
 	panic("wire: this kind of orbit has no worldline")
+}
+
+// variant is one of the runs on the coarsest rung that are compared.
+type variant struct {
+	ramp source.Ramp
+	path worldline.Worldline
 }
 
 func (r *boundRun) worldline() worldline.Worldline { return r.path }
@@ -415,12 +491,23 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	res := &result.Result{
 		Schema: result.Schema, Title: c.Title, Case: tree, Conventions: conventions(),
-		Orbit: describePath(r.path), Warnings: append([]string{}, Warnings(c)...),
+		Orbit: r.describe(), Warnings: append(append([]string{}, Warnings(c)...), r.notes()...),
 	}
 	delete(res.Conventions, "circular strain")
 	delete(res.Conventions, "circular series")
 	delete(res.Conventions, "orbital frequency")
 	res.Conventions["averages"] = fmt.Sprintf("fluxes are averages per coordinate time over whole radial periods, window sin^%d over %d of them", 2*r.power, r.power+1)
+	if r.table != nil {
+		what := "radial periods"
+		if !r.cycle.radial {
+			what = "turns in azimuth"
+		}
+		length := float64(r.power+1) * r.period
+		d := r.n.domain
+		u, v := d.Retarded(r.n.until)+r.origin, d.Advanced(r.n.until)+r.origin
+		res.Conventions["averages"] = fmt.Sprintf("fluxes are averages per coordinate time over %d whole %s of %.8g M, window sin^%d, at infinity from u = %.8g to %.8g, at the horizon from v = %.8g to %.8g",
+			r.power+1, what, r.period, 2*r.power, u-length, u, v-length, v)
+	}
 	res.Conventions["m = 0"] = "strain of m = 0 has an arbitrary constant (memory): only its changes mean something; its flux counts once"
 	index := r.rungList(res)
 	for _, m := range r.modes {
@@ -428,6 +515,7 @@ func (r *boundRun) assemble(c *configs.Case, junk map[*ladder]junkSeries) (*resu
 	}
 	sumModes(c, res, rate)
 	verdict(c, res)
+	r.tellDrift(res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, junk, dphi)
 	if s != nil {
@@ -457,32 +545,6 @@ func (r *boundRun) entry(m *ladder, rung int) result.Mode {
 			"horizon discretisation": f[1].energyBar.Discretisation, "horizon transient": f[1].energyBar.Transient,
 		},
 	}
-}
-
-// describePath lists what a worldline says of itself.
-func describePath(w worldline.Worldline) *result.Orbit {
-	o := &result.Orbit{Kind: w.Kind(), Numbers: map[string]float64{
-		"horizon_radius": hyperboloidal.Horizon, "light_ring_radius": hyperboloidal.LightRing, "isco_radius": hyperboloidal.ISCORadius,
-	}}
-	for _, n := range w.Numbers() {
-		switch n.Name {
-		case "E":
-			o.Energy = n.Value
-		case "L":
-			o.AngMom = n.Value
-		default:
-			o.Numbers[n.Name] = n.Value
-		}
-	}
-	for _, k := range w.Markers() {
-		if o.Markers == nil {
-			o.Markers = map[string]float64{}
-		}
-		if _, there := o.Markers[k.Name]; !there {
-			o.Markers[k.Name] = k.T
-		}
-	}
-	return o
 }
 
 // runningMax is the largest value within reach of each sample.

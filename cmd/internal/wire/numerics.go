@@ -8,6 +8,7 @@ import (
 	"nullmark/grid"
 	"nullmark/hyperboloidal"
 	"nullmark/source"
+	"nullmark/source/worldline"
 )
 
 // numerics is every choice of the scheme; tests vary what case files cannot.
@@ -17,6 +18,7 @@ type numerics struct {
 	taylor         int     // order in time
 	cells          float64 // kernel width in cells
 	moments        int
+	fast           bool    // the particle may near the speed of light
 	inner          float64 // thickness of the layers, M
 	outer          float64
 	gap            float64 // extra flat room on both sides of the kernel, M
@@ -32,6 +34,7 @@ type numerics struct {
 	widest         float64 // kernel width that the flat part makes room for, M
 	domain         hyperboloidal.Layers
 	coarsestDx     float64
+	through        worldline.Continuation // of an inspiral's torque through the plunge
 }
 
 // choose gives the numerics of a case: measured defaults, overridden by what
@@ -48,6 +51,9 @@ func choose(c *configs.Case) numerics {
 			n.outer = math.Max(n.outer, 1.6*c.Orbit.Radius)
 		case configs.Eccentric:
 			n.outer = math.Max(n.outer, 1.6*c.Orbit.P/(1+c.Orbit.E))
+		case configs.Infall, configs.Scatter, configs.Inspiral:
+			n.fast = true
+			n.cells = n.kernelCells()
 		}
 	}
 	m := c.Numerics
@@ -59,7 +65,7 @@ func choose(c *configs.Case) numerics {
 	}
 	if m.KernelMoments != nil {
 		n.moments = *m.KernelMoments
-		n.cells = defaultCells(n.moments)
+		n.cells = n.kernelCells()
 	}
 	if m.KernelWidth != nil {
 		n.cells = *m.KernelWidth
@@ -78,6 +84,17 @@ func choose(c *configs.Case) numerics {
 		n.until = *c.Span.Until
 	}
 	return n
+}
+
+// kernelCells is the kernel width in cells. Under a particle that nears the
+// horizon, grid waves of half a cell's length would be in step with it: its kernel
+// is wider, which takes the noise of a plunge from 1e-8 of the peak to 1e-11 (see
+// ORBITS.md).
+func (n *numerics) kernelCells() float64 {
+	if n.fast {
+		return defaultCells(n.moments) + 0.3
+	}
+	return defaultCells(n.moments)
 }
 
 // defaultCells is the kernel width in cells below which aliasing takes over, by

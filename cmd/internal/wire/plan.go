@@ -52,6 +52,10 @@ func planBurst(c *configs.Case, n numerics) (*Plan, error) {
 		return nil, err
 	}
 	p := &Plan{Orbit: describePath(r.path), Warnings: Warnings(c)}
+	if r.table != nil {
+		r.shiftMarkers(p.Orbit)
+		p.Warnings = append(p.Warnings, r.table.notes()...)
+	}
 	r.foresee(p, r.firstUntil, 2)
 	return p, nil
 }

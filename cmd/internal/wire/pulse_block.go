@@ -47,6 +47,7 @@ type pulseScheme struct {
 	sample  float64 // between two samples kept
 	stored  int     // every how many of these are stored
 	dx      float64 // of the finest rung asked for at first
+	coupled *coupledPulse
 }
 
 // pulseRun is what one rung leaves of one block of fields: Signals[q][place].
@@ -141,15 +142,21 @@ func (s *pulseScheme) recorder(g grid.Grid, fields, per int) *pulseRecorder {
 	rho := hyperboloidal.TortoiseAt(s.radius)
 	r := &pulseRecorder{signals: make([][pulsePlaces]pulse.Signal, fields), per: per}
 	r.first, r.weights = lagrange((rho-g.Start)/g.Dx, g.N, s.order)
-	starts := [pulsePlaces]float64{s.domain.Retarded(0), s.domain.Advanced(0), 0}
-	n := s.samples() + 1
 	for q := range r.signals {
-		for p := range r.signals[q] {
-			r.signals[q][p] = pulse.Signal{Start: starts[p], Step: s.sample,
-				Psi: make([]complex128, 0, n), Pi: make([]complex128, 0, n)}
-		}
+		r.signals[q] = s.emptySignals()
 	}
 	return r
+}
+
+// emptySignals has room for a whole run.
+func (s *pulseScheme) emptySignals() (out [pulsePlaces]pulse.Signal) {
+	starts := [pulsePlaces]float64{s.domain.Retarded(0), s.domain.Advanced(0), 0}
+	n := s.samples() + 1
+	for p := range out {
+		out[p] = pulse.Signal{Start: starts[p], Step: s.sample,
+			Psi: make([]complex128, 0, n), Pi: make([]complex128, 0, n)}
+	}
+	return out
 }
 
 // lagrange returns the weights of the polynomial through order+2 points around

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"strings"
 	"testing"
 
 	"nullmark/configs"
@@ -74,5 +75,39 @@ func TestTailOfARadialFall(t *testing.T) {
 	}
 	if d := math.Abs(tail.Energy.Value - 1.0/6); d > 1e-12 || tail.AngularMomentum.Value != 0 {
 		t.Errorf("tail %+v, want energy 1/6 and no angular momentum", *tail)
+	}
+}
+
+// TestSpanThatIsTooShortIsRefused: with what would be enough, which is enough.
+func TestSpanThatIsTooShortIsRefused(t *testing.T) {
+	for _, file := range []string{"circular.yaml", "eccentric.yaml", "plunge.yaml"} {
+		path := filepath.Join("..", "..", "..", "configs", file)
+		sets := []string{"span.until=100", "accuracy.relative=1e-4", "waves.modes=[[2,2]]", "numerics.rungs=2"}
+		_, err := configs.Reader{Sets: sets, Checks: Checks()}.Read(path)
+		if err == nil || !strings.Contains(err.Error(), "span.until is 100, but must be at least") {
+			t.Errorf("%s: %v", file, err)
+			continue
+		}
+		var least float64
+		if _, err := fmt.Sscanf(err.Error()[strings.Index(err.Error(), "at least"):], "at least %g", &least); err != nil {
+			t.Fatal(err)
+		}
+		sets[0] = fmt.Sprintf("span.until=%g", least)
+		c, err := configs.Reader{Sets: sets, Checks: Checks()}.Read(path)
+		if err != nil {
+			t.Errorf("%s: %g is said to be enough and refused: %v", file, least, err)
+			continue
+		}
+		run(t, c)
+	}
+}
+
+// TestConventionsSpeakOfWhatIsThere: what is true of circular orbits alone is
+// told of no pulse.
+func TestConventionsSpeakOfWhatIsThere(t *testing.T) {
+	for key := range pulseConventions() {
+		if strings.HasPrefix(key, "circular") || strings.HasPrefix(key, "orbital") {
+			t.Errorf("a pulse's result states %q", key)
+		}
 	}
 }

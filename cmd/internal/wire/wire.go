@@ -7,7 +7,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"slices"
+	"math"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -58,7 +58,7 @@ type Plan struct {
 
 // Checks returns the physics checks of case files.
 func Checks() []func(*configs.Case) []configs.Problem {
-	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkKerr}
+	return []func(*configs.Case) []configs.Problem{checkCircular, checkEccentric, checkBurst, checkSpan, pulseProblems, checkTable, checkKerr}
 }
 
 func checkCircular(c *configs.Case) []configs.Problem {
@@ -81,8 +81,24 @@ func checkEccentric(c *configs.Case) []configs.Problem {
 	if c.Orbit == nil || c.Orbit.Kind != configs.Eccentric || c.Waves.Equation != configs.Master {
 		return nil
 	}
-	_, err := newEccentric(c.Orbit)
-	return refusal(err)
+	if _, err := newEccentric(c.Orbit); err != nil {
+		return refusal(err)
+	}
+	if c.Span.Until == nil || c.Waves.Equation != configs.Master {
+		return nil
+	}
+	r, err := newBoundRun(c, choose(c), Options{})
+	if err != nil {
+		return refusal(err)
+	}
+	// The average and the one a period before it, which tells what the start-up
+	// still leaves.
+	if least := r.n.on() + r.window() + r.period; r.n.until < least {
+		return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
+			"at least %.0f: averages at this accuracy take %d radial periods of %.6g M after the start-up, and one more to see that they have settled (or leave span out)",
+			math.Ceil(least-r.n.domain.So), r.power+1, r.period)}}
+	}
+	return nil
 }
 
 // refusal turns what a worldline says of impossible parameters into a problem of
@@ -110,10 +126,56 @@ func Warnings(c *configs.Case) []string {
 			}
 		}
 	}
+	if c.Orbit != nil && c.Orbit.Kind == configs.Inspiral && c.Orbit.MassRatio > 1e-2 {
+		w = append(w, fmt.Sprintf("orbit.mass_ratio %g is above 0.01: the waves are those of the first order in it, and what the second order adds is of the size of the mass ratio itself", c.Orbit.MassRatio))
+	}
 	if c.Accuracy.Relative < 5e-12 {
 		w = append(w, fmt.Sprintf("accuracy.relative %.3g is below what double precision reaches (about 5e-12 in a flux): expect \"not met\"", c.Accuracy.Relative))
 	}
 	return w
+}
+
+// engine runs and plans the cases of one kind.
+type engine struct {
+	run  func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error)
+	plan func(c *configs.Case) (*Plan, error)
+}
+
+// engineOf picks the engine of a case, or says that there is none.
+func engineOf(c *configs.Case) (engine, error) {
+	with := func(run func(context.Context, *configs.Case, numerics, Options) (*result.Bundle, error), plan func(*configs.Case, numerics) (*Plan, error)) engine {
+		return engine{
+			run: func(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
+				return run(ctx, c, choose(c), o)
+			},
+			plan: func(c *configs.Case) (*Plan, error) { return plan(c, choose(c)) },
+		}
+	}
+	if c.Pulse != nil {
+		return engine{runPulse, planPulse}, nil
+	}
+	if c.Waves.Equation == configs.Teukolsky {
+		switch {
+		case c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
+			return engine{runKerrCircular, planKerrCircular}, nil
+		case kerrSteady(c.Orbit.Kind):
+			return engine{runKerrBound, planKerrBound}, nil
+		case c.Orbit.Kind == configs.Infall:
+			return engine{runKerrFall, planKerrFall}, nil
+		}
+		return engine{}, fmt.Errorf("orbit.kind %s with waves.equation teukolsky is not available in this version", c.Orbit.Kind)
+	}
+	switch c.Orbit.Kind {
+	case configs.Circular:
+		return with(runCircular, planCircular), nil
+	case configs.Eccentric:
+		return with(runBound, planBound), nil
+	case configs.Infall, configs.Scatter, configs.Inspiral:
+		return with(runBurst, planBurst), nil
+	case configs.Table:
+		return with(runTable, planTable), nil
+	}
+	return engine{}, fmt.Errorf("orbit.kind %s is not available in this version", c.Orbit.Kind)
 }
 
 // Run evolves the case and certifies its numbers. The error wraps the
@@ -121,40 +183,20 @@ func Warnings(c *configs.Case) []string {
 // breaks down.
 func Run(ctx context.Context, c *configs.Case, o Options) (*result.Bundle, error) {
 	o.Workers = max(o.Workers, 1)
-	switch {
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
-		return runKerrCircular(ctx, c, o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrSteady(c.Orbit.Kind):
-		return runKerrBound(ctx, c, o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Infall:
-		return runKerrFall(ctx, c, o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return runCircular(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return runBound(ctx, c, choose(c), o)
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
-		return runBurst(ctx, c, choose(c), o)
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.run(ctx, c, o)
 }
 
 // MakePlan says what Run would do.
 func MakePlan(c *configs.Case) (*Plan, error) {
-	switch {
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
-		return planKerrCircular(c)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && kerrSteady(c.Orbit.Kind):
-		return planKerrBound(c)
-	case c.Orbit != nil && c.Waves.Equation == configs.Teukolsky && c.Orbit.Kind == configs.Infall:
-		return planKerrFall(c)
-	case c.Orbit != nil && c.Orbit.Kind == configs.Circular && c.Waves.Equation == configs.Master:
-		return planCircular(c, choose(c))
-	case c.Orbit != nil && c.Orbit.Kind == configs.Eccentric && c.Waves.Equation == configs.Master:
-		return planBound(c, choose(c))
-	case c.Orbit != nil && c.Waves.Equation == configs.Master && slices.Contains([]string{configs.Infall, configs.Scatter, configs.Inspiral}, c.Orbit.Kind):
-		return planBurst(c, choose(c))
+	e, err := engineOf(c)
+	if err != nil {
+		return nil, err
 	}
-	return nil, fmt.Errorf("this case is not available in this version")
+	return e.plan(c)
 }
 
 // conventions are what the tool states in every result.
