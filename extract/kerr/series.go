@@ -60,3 +60,32 @@ func StrainSeries(psi4 []complex128, dt float64, first int, period float64) (h [
 	}
 	return h, bar
 }
+
+// Rundown integrates r psi4 of a transient that has died away at the last sample:
+// rate = 2 int psi4 and r h = int rate, both 0 at the end, with polynomials of
+// degree 7. What is left there by mean (round-off, the tail) over the last
+// fraction of the samples is turned into a drift, whose size (end-u)^2 |mean| and
+// 2 (end-u) |mean| bounds the error of both; it needs no oscillation to measure.
+func Rundown(psi4 []complex128, dt, last float64) (h, rate []complex128, drift, slide []float64) {
+	n := len(psi4)
+	back := make([]complex128, n)
+	for k := range psi4 {
+		back[n-1-k] = 2 * psi4[k]
+	}
+	r := integral(back, dt)
+	w := integral(r, dt)
+	h, rate = make([]complex128, n), make([]complex128, n)
+	drift, slide = make([]float64, n), make([]float64, n)
+	tail := max(int(last*float64(n)), 1)
+	mean := 0.0
+	for _, z := range psi4[n-tail:] {
+		mean += cmplx.Abs(z)
+	}
+	mean /= float64(tail)
+	for k := range h {
+		h[k], rate[k] = w[n-1-k], -r[n-1-k]
+		t := float64(n-1-k) * dt
+		drift[k], slide[k] = t*t*mean, 2*t*mean
+	}
+	return h, rate, drift, slide
+}

@@ -48,7 +48,7 @@ func (c *command) verify(cmd *cobra.Command) error {
 		}
 		stage := fmt.Sprintf("case %d of %d", i+1, n)
 		m.update(stage, float64(i), float64(n))
-		return c.engine.Run(ctx, kase, wire.Options{
+		b, err := c.engine.Run(ctx, kase, wire.Options{
 			Workers: c.workers,
 			Progress: func(p wire.Progress) {
 				if p.Total > 0 {
@@ -56,6 +56,10 @@ func (c *command) verify(cmd *cobra.Command) error {
 				}
 			},
 		})
+		if err == nil && kase.Waves.Equation == configs.Teukolsky && c.engine.CanAsk != nil && c.engine.CanAsk(kase) == nil {
+			err = c.engine.SecondOpinion(ctx, kase, b.Result, c.workers)
+		}
+		return b, err
 	}
 	outcome, err := verify.Run(cmd.Context(), c.checks, run, c.long)
 	m.stop()

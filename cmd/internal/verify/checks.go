@@ -60,6 +60,7 @@ func Checks() []Check {
 	all = append(all, extractionChecks()...)
 	all = append(all, orbitChecks()...)
 	all = append(all, barChecks()...)
+	all = append(all, kerrChecks()...)
 	all = append(all, pulseBarChecks()...)
 	return all
 }

@@ -25,7 +25,7 @@ const Schema = "nullmark.verification/1"
 
 // A Check is one published number and the way to find it with this tool.
 type Check struct {
-	Group     string  // "equation", "slicing", "source", "extraction" or "error bars"
+	Group     string  // "equation", "slicing", "source", "extraction", "error bars" or "Kerr"
 	Name      string  // what is compared, with its place
 	Source    Source  // where Published comes from
 	Published float64 // the number there
@@ -81,7 +81,8 @@ type Outcome struct {
 	Checks  []Row   `json:"checks"`
 }
 
-// A Runner runs a case, the i-th of n, counted from 0.
+// A Runner runs a case, the i-th of n, counted from 0, with the second opinion
+// where the equation is teukolsky and the orbit circular.
 type Runner func(ctx context.Context, c Case, i, n int) (*result.Bundle, error)
 
 // Run runs the checks in their order, the slow ones only when long is set, and

@@ -94,8 +94,16 @@ func sumKerr(res *result.Result, inf, hor []*result.Flux, top int, whole bool) {
 		tl, ok2 := flux.Tail(l, margin)
 		return &result.Flux{Energy: te, AngularMomentum: tl}, ok1 && ok2
 	}
+	// m = 0 is no part of the fall with m
+	if len(res.PerM) > 0 && res.PerM[0].M == 0 {
+		inf, hor = inf[1:], hor[min(1, len(hor)):]
+	}
 	ti, ok1 := tail(inf, 0)
-	th, ok2 := tail(hor, 0.02)
+	var th *result.Flux
+	ok2 := true
+	if t.Horizon != nil {
+		th, ok2 = tail(hor, 0.02)
+	}
 	if !ok1 || !ok2 {
 		t.Truncation.Note = "l_max is too small, or the sums at each m fall too slowly, to estimate the tail in m: the total lacks it"
 		res.Warnings = append(res.Warnings, t.Truncation.Note)

@@ -14,7 +14,10 @@ import (
 const nearExtremal = 0.99
 
 // kerrKind says whether the Teukolsky equation is wired for a kind of orbit.
-func kerrKind(kind string) bool { return kind == configs.Circular || kind == configs.Eccentric }
+func kerrKind(kind string) bool { return kerrSteady(kind) || kind == configs.Infall }
+
+// kerrSteady says whether it is a kind of bound orbit.
+func kerrSteady(kind string) bool { return kind == configs.Circular || kind == configs.Eccentric }
 
 // checkKerr holds an orbit on Kerr against what exists there.
 func checkKerr(c *configs.Case) []configs.Problem {
@@ -22,7 +25,7 @@ func checkKerr(c *configs.Case) []configs.Problem {
 		return nil // pulses have checks of their own
 	}
 	if !kerrKind(c.Orbit.Kind) {
-		return []configs.Problem{{Key: "orbit.kind", Value: c.Orbit.Kind, Want: "circular or eccentric with waves.equation teukolsky in this version"}}
+		return []configs.Problem{{Key: "orbit.kind", Value: c.Orbit.Kind, Want: "circular, eccentric or infall with waves.equation teukolsky in this version"}}
 	}
 	h, err := hyperboloidal.NewKerr(c.Hole.Spin)
 	if err != nil {
@@ -32,6 +35,10 @@ func checkKerr(c *configs.Case) []configs.Problem {
 		return checkKerrCircular(c, h)
 	}
 	o := c.Orbit
+	if o.Kind == configs.Infall {
+		_, bad := kerrFallOf(c, h)
+		return bad
+	}
 	if !(o.P/(1-o.E) <= 500) {
 		return []configs.Problem{{Key: "orbit.p", Value: o.P, Want: fmt.Sprintf("at most %.6g with e = %g: orbits that reach beyond r = 500 are out of reach of a time-domain run", 500*(1-o.E), o.E)}}
 	}

@@ -5,6 +5,7 @@ import (
 	"math"
 
 	"nullmark/configs"
+	"nullmark/equations/coupled"
 	"nullmark/extract/certify"
 	"nullmark/extract/result"
 )
@@ -103,6 +104,23 @@ func planKerrBound(c *configs.Case) (*Plan, error) {
 		}
 		f.look(t.m, t.n, r.firstUntil(60))
 		f.book(t.m, t.n, t.asked, t.rung, until)
+	}
+	f.finish()
+	return p, nil
+}
+
+// planKerrFall foresees a plunge.
+func planKerrFall(c *configs.Case) (*Plan, error) {
+	r, err := newKerrFall(c, Options{})
+	if err != nil {
+		return nil, err
+	}
+	p := &Plan{Orbit: r.describe(c), Warnings: Warnings(c)}
+	f := newKerrForesight(p, &r.n)
+	for _, t := range r.ms {
+		n := max(t.last-lowest(t.m)+2, coupled.Angular(r.hole.Spin(), 0.3*float64(max(t.m, 1)), t.m, t.last, r.asked))
+		f.look(t.m, n, r.ends)
+		f.book(t.m, n, t.asked, t.rung, r.ends)
 	}
 	f.finish()
 	return p, nil

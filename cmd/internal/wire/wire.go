@@ -143,8 +143,10 @@ func engineOf(c *configs.Case) (engine, error) {
 		switch {
 		case c.Orbit.Kind == configs.Circular && c.Orbit.Inclination == 0:
 			return engine{runKerrCircular, planKerrCircular}, nil
-		case kerrKind(c.Orbit.Kind):
+		case kerrSteady(c.Orbit.Kind):
 			return engine{runKerrBound, planKerrBound}, nil
+		case c.Orbit.Kind == configs.Infall:
+			return engine{runKerrFall, planKerrFall}, nil
 		}
 		return engine{}, fmt.Errorf("orbit.kind %s with waves.equation teukolsky is not available in this version", c.Orbit.Kind)
 	}
