@@ -129,7 +129,9 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 			r.n.until -= t.origin
 		}
 	}
-	r.open[0], r.open[1] = openEnds(c)
+	if !n.closed {
+		r.open[0], r.open[1] = openEnds(c)
+	}
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
