@@ -318,6 +318,13 @@ func (r *kerrBound) certify(t *kerrTones) (climb bool, err error) {
 		sum.AngularMomentum.Error += tail * math.Abs(sum.AngularMomentum.Value)
 		t.parts[end], t.sums[end] = parts, sum
 		t.settled = t.settled && settled(parts, r.asked)
+		for i, f := range parts[:max(t.asked-lowest(t.m)+1, 0)] {
+			// The modes that the case names count as well.
+			if i < len(other) && f.Energy.Error > r.asked*heldTo(f, sum) &&
+				kerr.Remainder*math.Abs(value[i].Energy-other[i].Energy) > 0.3*f.Energy.Error {
+				climb = true
+			}
+		}
 		relative := sum.Energy.Error / math.Abs(sum.Energy.Value)
 		if relative <= r.asked {
 			continue

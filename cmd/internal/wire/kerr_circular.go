@@ -79,6 +79,9 @@ func newKerrCircular(c *configs.Case, o Options) (*kerrCircular, error) {
 func (r *kerrCircular) carry(t *kerrTone) {
 	t.n = coupled.Angular(r.hole.Spin(), t.tone.Omega, t.m, t.last, r.kerrClimb.asked)
 	t.n = max(t.n, t.last-lowest(t.m)+1+r.n.rungs-1)
+	if r.hole.Spin() != 0 {
+		t.n++ // what the coarser rungs lack would rule the bars of the weak modes
+	}
 	if r.n.angular > 0 {
 		t.n = max(r.n.angular, r.n.rungs)
 		t.last = min(t.last, lowest(t.m)+t.n-1)
