@@ -326,7 +326,7 @@ func TestTableRefusals(t *testing.T) {
 		says             []string
 	}{
 		{"horizon", row(51, "55,1.9,1.5"), "", []string{"orbit.file", "row 51, r = 1.9", "horizon"}},
-		{"time", row(51, "54,10,1.5"), "", []string{"\"t\"", "row 51", "does not increase"}},
+		{"time", row(51, "54,10,1.5"), "", []string{"\"t\"", "line 52", "does not increase"}},
 		{"word", row(51, "55,ten,1.5"), "", []string{"line 52", "\"r\""}},
 		{"light", row(51, "55,14,1.5"), "", []string{"row 51, r = 14", "faster than light"}},
 		{"gap", strings.Join(append(append([]string{}, lines[:100]...), lines[120:]...), "\n"), "", []string{"row 100, t = 124", "gap"}},
