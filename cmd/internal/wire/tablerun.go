@@ -103,7 +103,8 @@ func newTableRun(c *configs.Case, n numerics, o Options, p *tablePath) (*boundRu
 // A remainder of the start-up that falls like a power of the time since then is
 // the change times the ratio of the two times, or less. Of the change that the
 // missing rows make, their spacing leaves in the full table what its
-// interpolation error is of the thinner one's, and their rounding all of it.
+// interpolation error is of the thinner one's, and their rounding all of it;
+// half as much again is the margin.
 func (r *boundRun) moved(m *ladder, runs []*certify.Samples) (start, path [2]float64) {
 	late := math.Max((r.n.until-r.n.ramp.Centre)/r.delay(), 1)
 	change := func(e int, a, b *certify.Samples) float64 {
@@ -124,7 +125,7 @@ func (r *boundRun) moved(m *ladder, runs []*certify.Samples) (start, path [2]flo
 			start[e] = late * change(e, runs[0], runs[1])
 		}
 		if len(runs) > 2 {
-			path[e] = r.halved * change(e, runs[0], runs[2])
+			path[e] = 1.5 * r.halved * change(e, runs[0], runs[2])
 		}
 	}
 	return start, path
