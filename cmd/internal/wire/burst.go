@@ -129,9 +129,7 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 			r.n.until -= t.origin
 		}
 	}
-	if !n.closed {
-		r.open[0], r.open[1] = openEnds(c)
-	}
+	r.open[0], r.open[1] = openEnds(c)
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)

@@ -34,7 +34,6 @@ type numerics struct {
 	widest         float64 // kernel width that the flat part makes room for, M
 	domain         hyperboloidal.Layers
 	coarsestDx     float64
-	closed         bool                   // count the evolved range alone, without an estimate of what lies outside
 	through        worldline.Continuation // of an inspiral's torque through the plunge
 }
 
