@@ -127,7 +127,13 @@ func TestKerrEccentricAtZeroSpin(t *testing.T) {
 				continue
 			}
 			d := math.Abs(q.got.Value/q.truth - 1)
-			if ok := y.add(q.got, q.truth, 1e-11); !ok || !(d < 1e-9) {
+			// The table prints twelve digits at infinity, of weak modes at the
+			// horizon nine.
+			digits := 1e-11
+			if q.what == "energy at the horizon" {
+				digits = 5e-10
+			}
+			if ok := y.add(q.got, q.truth, digits); !ok || !(d < 1e-9) {
 				t.Errorf("(%d,%d) %s: off by %.1e, bar %.1e", w.L, w.M, q.what, d, q.got.Error/q.truth)
 			}
 		}
