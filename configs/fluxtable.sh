@@ -29,6 +29,7 @@ for r in $radii; do
 	fi
 done
 {
+	echo "# circular orbits on Schwarzschild, sums over all modes with the estimated rest in l; (mu/M)^2, absolute bars; made by fluxtable.sh TABLE $inner $outer $count $*"
 	echo "orbit.radius,energy_infinity,energy_infinity_error,energy_horizon,energy_horizon_error"
 	for r in $radii; do
 		awk -F, -v r="$r" '

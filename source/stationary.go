@@ -2,7 +2,6 @@ package source
 
 import (
 	"fmt"
-	"math"
 	"math/cmplx"
 
 	"nullmark/grid"
@@ -69,11 +68,17 @@ func (s *Stationary) Prepare(t, _ float64) {
 	for q, w := range s.omega {
 		e := cmplx.Exp(complex(0, -w*t))
 		// Leibniz: (ramp e)^(j) = sum_i C(j,i) ramp^(i) (-i w)^(j-i) e.
+		var power [MaxDerivative + 1]complex128 // (-i w)^n
+		r := 1.0
+		for n := range power {
+			power[n] = complex(r, 0) * minusI(n)
+			r *= w
+		}
 		for j := range s.factor {
 			var a complex128
 			b := 1.0
 			for i := 0; i <= j; i++ {
-				a += complex(b*s.jet[i]*math.Pow(w, float64(j-i)), 0) * minusI(j-i)
+				a += complex(b*s.jet[i], 0) * power[j-i]
 				b *= float64(j-i) / float64(i+1)
 			}
 			s.factor[j][q] = a * e

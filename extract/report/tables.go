@@ -66,10 +66,11 @@ func quantities() []quantity {
 	}
 }
 
-// lossWord names what a number counts: a rate or a total.
+// lossWord names what a number counts: a rate or a total (from when on, the
+// conventions say).
 func lossWord(measure string) string {
 	if measure == total {
-		return "radiated after the start-up"
+		return "radiated in all"
 	}
 	return "per coordinate time"
 }

@@ -76,11 +76,25 @@ func count(n int, what string) string {
 	return fmt.Sprintf("%d %ss", n, what)
 }
 
+// wholeMotion says whether totals hold an estimate of what is radiated outside the
+// evolved range: then they are those of the whole motion.
+func wholeMotion(r *result.Result) bool {
+	for _, m := range r.Modes {
+		if _, there := m.Budget["outside the range"]; there {
+			return true
+		}
+	}
+	return false
+}
+
 // lossSentence says what leaves the orbit: the answer to the first question.
 func lossSentence(r *result.Result) string {
 	opening, style := "The orbit loses energy at the rate", scientific
 	if measureOf(r) == total {
 		opening, style = "After the start-up the orbit loses the energy", readable
+		if wholeMotion(r) {
+			opening = "Over its whole motion the orbit loses the energy"
+		}
 	}
 	unit := energyUnit(measureOf(r))
 	if t := r.Total; t != nil && (t.Infinity != nil || t.Horizon != nil) {

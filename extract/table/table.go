@@ -43,6 +43,20 @@ type Table struct {
 	odd     map[string]*Fault // names that exist but are no columns, and why
 	closer  io.Closer
 	notes   []string
+	runs    []run // of text: which line a row stands on
+}
+
+// run is a stretch of rows on lines that follow each other.
+type run struct{ row, line int }
+
+// line is the line of a row of a text file, 0 in other files.
+func (t *Table) line(row int) int {
+	for i := len(t.runs) - 1; i >= 0; i-- {
+		if r := t.runs[i]; r.row <= row {
+			return r.line + row - r.row
+		}
+	}
+	return 0
 }
 
 // Open opens the file at path, whose kind is decided by its first bytes and
@@ -257,7 +271,7 @@ func (t *Table) Increasing(name string) ([]float64, error) {
 	}
 	for i := 1; i < len(x); i++ {
 		if !(x[i] > x[i-1]) {
-			f := &Fault{File: t.file, Array: name, Row: i, Kind: Order, Remedy: "sort the rows and drop repeated ones"}
+			f := &Fault{File: t.file, Array: name, Row: i, Line: t.line(i), Kind: Order, Remedy: "sort the rows and drop repeated ones"}
 			f.What = "does not increase (" + short(x[i-1]) + " is followed by " + short(x[i]) + ")"
 			return nil, f
 		}

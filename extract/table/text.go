@@ -90,6 +90,9 @@ func (t *Table) readText(r io.Reader) error {
 			}
 			return f
 		}
+		if row := len(cols[0].x); len(t.runs) == 0 || t.line(row) != line {
+			t.runs = append(t.runs, run{row, line})
+		}
 		for i, cell := range cells {
 			x, err := number(cell)
 			if err != nil {

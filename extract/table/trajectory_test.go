@@ -28,7 +28,7 @@ func TestTrajectory(t *testing.T) {
 	}
 	for s, want := range map[string]string{
 		"t,r\n0,10\n1,9\n":                    `column "phi": is not there; map it with orbit.columns: {phi: NAME}; the file holds: t, r`,
-		"t,r,phi\n0,10,0\n0,9,1\n":            `column "t": row 1: does not increase`,
+		"t,r,phi\n0,10,0\n0,9,1\n":            `line 3: column "t": does not increase`,
 		"t [s],r,phi\n0,10,0\n1,9,1\n":        `column "t": is in the unit "s"`,
 		"# s,1,rad\nt,r,phi\n0,10,0\n1,9,1\n": `column "t": is in the unit "s"`,
 		"t,r,phi\n0,10,0\n":                   `too few`,

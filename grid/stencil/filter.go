@@ -45,6 +45,10 @@ func (f *Filter) Apply(u, scratch []float64, lanes int) {
 		return
 	}
 	copy(scratch, u)
+	if lanes == 8 {
+		f.eight(u, scratch, n)
+		return
+	}
 	for i := q; i < n-q; i++ {
 		for l := 0; l < lanes; l++ {
 			var a float64
@@ -55,5 +59,36 @@ func (f *Filter) Apply(u, scratch []float64, lanes int) {
 			}
 			u[i*lanes+l] += a
 		}
+	}
+}
+
+// eight is Apply for eight lanes: the same sums in the same order, eight at a time.
+func (f *Filter) eight(u, scratch []float64, n int) {
+	const lanes = 8
+	q := f.Half
+	for i := q; i < n-q; i++ {
+		var a0, a1, a2, a3, a4, a5, a6, a7 float64
+		from := scratch[(i-q)*lanes : (i+q+1)*lanes]
+		for _, w := range f.Weights {
+			v := (*[lanes]float64)(from)
+			a0 += w * v[0]
+			a1 += w * v[1]
+			a2 += w * v[2]
+			a3 += w * v[3]
+			a4 += w * v[4]
+			a5 += w * v[5]
+			a6 += w * v[6]
+			a7 += w * v[7]
+			from = from[lanes:]
+		}
+		to := (*[lanes]float64)(u[i*lanes:])
+		to[0] += a0
+		to[1] += a1
+		to[2] += a2
+		to[3] += a3
+		to[4] += a4
+		to[5] += a5
+		to[6] += a6
+		to[7] += a7
 	}
 }

@@ -79,3 +79,27 @@ func TestFilterLeavesShortGridsAlone(t *testing.T) {
 		t.Errorf("four points under a filter of five: %v", u)
 	}
 }
+
+// TestFilterOfEightLanes: the unrolled path gives the bits of the plain one.
+func TestFilterOfEightLanes(t *testing.T) {
+	const n = 61
+	f := NewFilter(16, 0.5)
+	u := make([]float64, 8*n)
+	for i := range u {
+		u[i] = math.Sin(0.7*float64(i)) + 1e-3*float64(i%13)
+	}
+	for l := range 8 {
+		one := make([]float64, n)
+		for i := range one {
+			one[i] = u[8*i+l]
+		}
+		f.Apply(one, make([]float64, n), 1)
+		all := append([]float64(nil), u...)
+		f.Apply(all, make([]float64, len(all)), 8)
+		for i := range one {
+			if one[i] != all[8*i+l] {
+				t.Fatalf("lane %d, point %d: %g and %g", l, i, one[i], all[8*i+l])
+			}
+		}
+	}
+}

@@ -145,6 +145,54 @@ func TestCompareUsesTheCasesModel(t *testing.T) {
 	}
 }
 
+// What is wrong with a model's file is said in one sentence with file and row,
+// and ends with the exit code of bad input.
+func TestCompareRefusesBadFiles(t *testing.T) {
+	room(t)
+	put(t, "case.yaml", circularCase)
+	if got := try(t, ringEngine(), "run", "case.yaml", "--out", "res", "--quiet"); got.code != ExitDone {
+		t.Fatalf("%+v", got)
+	}
+	put(t, "model.yaml", modelYAML)
+	modelFile(t, "m.csv", 1, false)
+	data, err := os.ReadFile("m.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	good := string(data)
+	row := strings.Split(good, "\n")[12] // the line 13 of the file
+	for what, c := range map[string]struct{ file, text, want string }{
+		"not a number":   {"m.csv", strings.Replace(good, row, "5,NaN,0", 1), `m.csv: line 13: column "re": is not a finite number`},
+		"infinite":       {"m.csv", strings.Replace(good, row, "5,0,Inf", 1), `m.csv: line 13: column "im": is not a finite number`},
+		"time":           {"m.csv", strings.Replace(good, row, "4.5,0,0", 1), `m.csv: line 13: column "t": does not increase`},
+		"missing cell":   {"m.csv", strings.Replace(good, row, "5,0.1", 1), "m.csv: line 13: column \"im\": has 2 cells where the lines above have 3"},
+		"empty cell":     {"m.csv", strings.Replace(good, row, "5,,0", 1), `m.csv: line 13: column "re": is empty`},
+		"no overlap":     {"m.csv", late(good), "5000 … 5290 and the reference's 20 … 300"},
+		"text as npz":    {"m.npz", good, "m.npz: is named .npz but holds text"},
+		"truncated npz":  {"m.npz", "PK\x03\x04\x14\x00", "m.npz: is no complete zip archive"},
+		"nothing at all": {"m.csv", "", "m.csv: "},
+	} {
+		put(t, c.file, c.text)
+		got := try(t, ringEngine(), "compare", "res", "--model", "model.yaml", "--set", "model.waveform.file="+c.file)
+		if got.code != ExitUsage || !strings.Contains(got.stderr, c.want) || strings.Count(strings.TrimSpace(got.stderr), "\n") > 0 {
+			t.Errorf("%s: %d %q, want %q", what, got.code, got.stderr, c.want)
+		}
+	}
+}
+
+// late moves all times of a csv by 5000.
+func late(text string) string {
+	lines := strings.Split(text, "\n")
+	for i, l := range lines {
+		var x float64
+		if n, _ := fmt.Sscanf(l, "%g,", &x); n == 1 {
+			_, rest, _ := strings.Cut(l, ",")
+			lines[i] = fmt.Sprintf("%g,%s", x+5000, rest)
+		}
+	}
+	return strings.Join(lines, "\n")
+}
+
 // Where the result cannot tell, --settle runs the case again and then it can.
 func TestCompareSettles(t *testing.T) {
 	room(t)

@@ -129,7 +129,9 @@ func newBurstRun(c *configs.Case, n numerics, o Options) (*burstRun, error) {
 			r.n.until -= t.origin
 		}
 	}
-	r.open[0], r.open[1] = openEnds(c)
+	if !n.closed {
+		r.open[0], r.open[1] = openEnds(c)
+	}
 	th := horizonTime(w)
 	r.falls = !math.IsInf(th, 1)
 	inner, outer := r.reach(th)
@@ -519,57 +521,14 @@ func (r *burstRun) entry(m *ladder, rung int) result.Mode {
 		L: m.l, M: m.m, Parity: m.parity.String(), Measure: total, Counts: counts, Infinity: at(f[certify.Infinity]),
 		Met: m.met, Why: m.why, Rung: rung,
 		Budget: map[string]float64{
-			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "outside the range": f[0].energyBar.Range, "round-off": f[0].energyBar.RoundOff,
+			"discretisation": f[0].energyBar.Discretisation, "start-up": f[0].energyBar.Transient, "round-off": f[0].energyBar.RoundOff,
 		},
+	}
+	if r.open[0] || r.open[1] {
+		out.Budget["outside the range"] = f[0].energyBar.Range
 	}
 	if !r.falls {
 		out.Horizon = at(f[certify.Horizon])
-	}
-	return out
-}
-
-// seriesOf samples strain and horizon field of all modes.
-func (r *climb) seriesOf(c *configs.Case, path worldline.Worldline, junk map[*ladder]junkSeries, dphi float64) *result.Series {
-	if len(r.modes) == 0 {
-		return nil
-	}
-	until := math.Inf(1)
-	for _, m := range r.modes {
-		until = math.Min(until, m.until)
-	}
-	d := r.n.domain
-	s := &result.Series{Prefix: "h", HorizonPrefix: "psi"}
-	s.U = ladderOfTimes(c.Output.Every, r.origin, r.origin+d.Retarded(until))
-	s.V = ladderOfTimes(c.Output.Every, math.Ceil(r.origin+d.Advanced(0)), r.origin+d.Advanced(until))
-	atU, atV := since(s.U, r.origin), since(s.V, r.origin)
-	t0, t1 := path.Span()
-	var st worldline.State
-	for i, t := range atU {
-		if t >= t0 && t <= t1 {
-			path.At(t, &st)
-			if st.Rstar < worldline.HorizonApproach {
-				break
-			}
-			s.T, s.R, s.Phi = append(s.T, s.U[i]), append(s.R, st.R), append(s.Phi, st.Phi)
-		}
-	}
-	for _, m := range r.modes {
-		out := result.ModeSeries{L: m.l, M: m.m}
-		out.Wave, out.WaveErr, out.Evidence = r.sampledWith(m, certify.Infinity, d.Retarded(0), atU, c.Output.Every, junk[m], dphi)
-		out.Horizon, out.HorizonErr, _ = r.sampledWith(m, certify.Horizon, d.Advanced(0), atV, c.Output.Every, junk[m], dphi)
-		s.Modes = append(s.Modes, out)
-	}
-	return s
-}
-
-// since is the times counted from origin.
-func since(times []float64, origin float64) []float64 {
-	if origin == 0 {
-		return times
-	}
-	out := make([]float64, len(times))
-	for i, t := range times {
-		out[i] = t - origin
 	}
 	return out
 }
@@ -581,32 +540,13 @@ func checkBurst(c *configs.Case) []configs.Problem {
 	}
 	switch c.Orbit.Kind {
 	case configs.Infall, configs.Scatter, configs.Inspiral:
-		w, err := burstPath(c)
+		_, err := burstPath(c)
 		if err != nil {
 			return refusal(err)
 		}
 		if c.Orbit.Kind == configs.Infall && c.Orbit.From <= 3.5 {
 			return []configs.Problem{{Key: "orbit.from", Value: c.Orbit.From, Want: "a start radius above 3.5: from there on the particle is at the light ring (r = 3) before its source could be switched on"}}
 		}
-		if c.Span.Until == nil {
-			return nil
-		}
-		// The event, and some of what follows it.
-		var s worldline.State
-		event := eventTime(w)
-		w.At(event, &s)
-		if least := event - math.Max(s.Rstar, 0) + 60; *c.Span.Until < least {
-			return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
-				"at least %.0f: the waves of the %s arrive around u = %.0f (or leave span out)", math.Ceil(least), eventName(w), least-60)}}
-		}
 	}
 	return nil
-}
-
-// eventName is what eventTime finds, in words.
-func eventName(w worldline.Worldline) string {
-	if w.Kind() == configs.Scatter {
-		return "passage through periastron"
-	}
-	return "plunge"
 }

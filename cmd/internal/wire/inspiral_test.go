@@ -159,7 +159,7 @@ func TestWeakScatterTendsToTheQuadrupole(t *testing.T) {
 	}
 	ps := []float64{15}
 	if *long {
-		ps = []float64{30, 60, 120}
+		ps = []float64{30, 40, 60}
 	}
 	var off []float64
 	for _, p := range ps {

@@ -34,6 +34,7 @@ type numerics struct {
 	widest         float64 // kernel width that the flat part makes room for, M
 	domain         hyperboloidal.Layers
 	coarsestDx     float64
+	closed         bool                   // count the evolved range alone, without an estimate of what lies outside
 	through        worldline.Continuation // of an inspiral's torque through the plunge
 }
 
@@ -51,7 +52,7 @@ func choose(c *configs.Case) numerics {
 			n.outer = math.Max(n.outer, 1.6*c.Orbit.Radius)
 		case configs.Eccentric:
 			n.outer = math.Max(n.outer, 1.6*c.Orbit.P/(1+c.Orbit.E))
-		case configs.Infall, configs.Scatter, configs.Inspiral:
+		case configs.Infall, configs.Scatter, configs.Inspiral, configs.Table:
 			n.fast = true
 			n.cells = n.kernelCells()
 		}

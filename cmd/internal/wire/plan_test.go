@@ -1,6 +1,7 @@
 package wire
 
 import (
+	"path/filepath"
 	"testing"
 
 	"nullmark/configs"
@@ -11,11 +12,7 @@ import (
 // rungs that were foreseen, up to those it climbed to.
 func TestPlansOfShippedCases(t *testing.T) {
 	for _, name := range configs.Shipped() {
-		data, err := configs.ShippedFile(name)
-		if err != nil {
-			t.Fatal(err)
-		}
-		c, err := configs.Reader{Checks: Checks()}.Parse(name, data)
+		c, err := configs.Reader{Checks: Checks()}.Read(filepath.Join("..", "..", "..", "configs", name))
 		if err != nil {
 			t.Fatal(err)
 		}

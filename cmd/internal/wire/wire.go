@@ -7,7 +7,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
 
 	"nullmark/configs"
 	"nullmark/extract/result"
@@ -83,20 +82,6 @@ func checkEccentric(c *configs.Case) []configs.Problem {
 	}
 	if _, err := newEccentric(c.Orbit); err != nil {
 		return refusal(err)
-	}
-	if c.Span.Until == nil || c.Waves.Equation != configs.Master {
-		return nil
-	}
-	r, err := newBoundRun(c, choose(c), Options{})
-	if err != nil {
-		return refusal(err)
-	}
-	// The average and the one a period before it, which tells what the start-up
-	// still leaves.
-	if least := r.n.on() + r.window() + r.period; r.n.until < least {
-		return []configs.Problem{{Key: "span.until", Value: *c.Span.Until, Want: fmt.Sprintf(
-			"at least %.0f: averages at this accuracy take %d radial periods of %.6g M after the start-up, and one more to see that they have settled (or leave span out)",
-			math.Ceil(least-r.n.domain.So), r.power+1, r.period)}}
 	}
 	return nil
 }
