@@ -494,6 +494,7 @@ func (r *burstRun) assemble(c *configs.Case) (*result.Bundle, error) {
 	sumModes(c, res, total)
 	r.peaks(res)
 	r.kick(res)
+	r.ringdown(res)
 	verdict(c, res)
 	_, dphi := r.path.Uncertainty()
 	s := r.seriesOf(c, r.path, r.starts, dphi)

@@ -108,6 +108,20 @@ func TestPlungeRings(t *testing.T) {
 	if off := cmplx.Abs(got - want); off > 1e-9 || off > bar {
 		t.Errorf("omega = %.9f, Leaver's %.9f: off by %.1e, bar %.1e", got, want, off, bar)
 	}
+	// The run quotes the same by itself.
+	quoted := false
+	for _, q := range b.Result.Ringing {
+		if q.L != 2 || q.M != 2 || q.N != 0 {
+			continue
+		}
+		quoted = true
+		if math.Abs(q.Re.Value-real(want)) > q.Re.Error || math.Abs(q.Im.Value-imag(want)) > q.Im.Error || q.Re.Error > 1e-9 {
+			t.Errorf("the result quotes %.12g(%.1e) %.12g(%.1e) i for %v", q.Re.Value, q.Re.Error, q.Im.Value, q.Im.Error, want)
+		}
+	}
+	if !quoted {
+		t.Errorf("the result quotes no ringing of (2,2): %v", b.Result.Warnings)
+	}
 	c := shipped(t, "plunge")
 	w, err := burstPath(c)
 	if err != nil {
