@@ -226,8 +226,12 @@ type column struct {
 
 // waveform spoils the modes with m > 0 and puts them in a convention.
 func waveform(s *result.Series, c compare.Convention, f spoiler) (u []float64, modes []column, err error) {
+	early := 20.0 // a little early, as models do not know of it
+	if c.Quantity == "curvature" {
+		early = 0 // a difference must not reach into the start-up
+	}
 	first := 0
-	for first < len(s.U) && s.U[first] < s.JunkUntil-20 { // a little early, as models do not know of it
+	for first < len(s.U) && s.U[first] < s.JunkUntil-early {
 		first++
 	}
 	u = s.U[first:]
