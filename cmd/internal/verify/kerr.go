@@ -66,7 +66,7 @@ func kerrPostNewtonian() Source {
 
 func kerrAbsorption() Source {
 	return Source{"Tagoshi+ 1997", "H. Tagoshi, S. Mano, E. Takasugi, Prog. Theor. Phys. 98, 829 (1997), read in M. Sasaki & H. Tagoshi, " +
-		"Living Rev. Relativity 6, 6 (2003), eq. 196; the tolerance is twice the last known coefficient at the next power, v^9"}
+		"Living Rev. Relativity 6, 6 (2003), eq. 196; the tolerance, twice the last known coefficient at the next power, v^9, was set after the difference was known: it shows consistency, and the power of the residual is what a test holds"}
 }
 
 // kerrCase is a circular equatorial orbit on Kerr.
